@@ -1,0 +1,1 @@
+"""Everything that meets the outside world: files, words, pictures, the command line."""
