@@ -93,7 +93,7 @@ def at_height(z: Floats, x: Floats, target: Any) -> Floats:
     >>> at_height(np.array([10.0, 20.0, 40.0]), np.array([1.0, np.nan, 4.0]), [25.0, 50.0])
     array([2.5, nan])
     """
-    count, z, x, low, target, inside = _bracket(z, x, target)
+    _count, z, x, low, target, inside = _bracket(z, x, target)
     z0, z1 = np.take_along_axis(z, low, -1), np.take_along_axis(z, low + 1, -1)
     x0, x1 = np.take_along_axis(x, low, -1), np.take_along_axis(x, low + 1, -1)
     with np.errstate(invalid="ignore", divide="ignore", over="ignore"):
@@ -131,7 +131,7 @@ def integral_between(z: Floats, x: Floats, base: Any, top: Any) -> Floats:
 
 def _integral_to(z: Floats, x: Floats, target: Any) -> Floats:
     """Integral from the lowest level of each profile to ``target``."""
-    count, z, x, low, target, inside = _bracket(z, x, target)
+    _count, z, x, low, target, inside = _bracket(z, x, target)
     with np.errstate(invalid="ignore", over="ignore"):
         steps = 0.5 * (x[..., 1:] + x[..., :-1]) * np.diff(z, axis=-1)
     running = np.add.accumulate(np.where(np.isfinite(steps), steps, 0.0), axis=-1)

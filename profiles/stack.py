@@ -182,7 +182,7 @@ class Stack(Labelled):
             True where height and the variables asked for are there and no flag speaks against them.
             The heights of the usable levels increase strictly once the quality check has run.
         """
-        good = np.isfinite(self.height) & ((self.level_flag & bits_concerning(*groups)) == 0)
+        good: Bools = np.isfinite(self.height) & ((self.level_flag & bits_concerning(*groups)) == 0)
         for group in groups:
             for name in _NEEDED[group]:
                 good = good & np.isfinite(getattr(self, name))
@@ -199,7 +199,7 @@ class Stack(Labelled):
         if not stacks:
             return cls.of(profiles=0)
         levels = max(stack.level_count for stack in stacks)
-        joined = {}
+        joined: dict[str, Any] = {}
         for name, label in labels(cls).items():
             parts = [getattr(stack, name) for stack in stacks]
             if label.dims == ("profile", "level"):
@@ -256,7 +256,9 @@ class Stack(Labelled):
         }
         found: dict[str, Any] = {}
         for key, array in dataset.variables.items():
-            name = key if key in table else by_standard_name.get(array.attrs.get("standard_name"))
+            name = (
+                key if key in table else by_standard_name.get(str(array.attrs.get("standard_name")))
+            )
             if name is None or (name in found and key != name):
                 continue
             label = table[str(name)]
