@@ -1,1 +1,9 @@
-"""Pictures of the statement as files."""
+"""
+Pictures of the statement as files.
+
+Modules
+-------
+sheet   one profile on one sheet
+"""
+
+SUFFIXES = (".svg", ".pdf", ".png")
