@@ -1,6 +1,7 @@
 """Profiles and answers as files for other programs: CF netCDF, Parquet, CSV; always SI."""
 
 from __future__ import annotations
+
 from typing import TYPE_CHECKING
 
 from backveer.io.atomic import replacing, suffix_among

@@ -3,6 +3,7 @@
 from __future__ import annotations
 
 import functools
+import itertools
 import re
 from collections.abc import Callable
 from typing import TYPE_CHECKING, Any
@@ -176,7 +177,7 @@ def numbers(text: str | None, option: str) -> tuple[float, ...] | None:
         values = tuple(float(part) for part in text.split(","))
     except ValueError:
         raise click.BadParameter(f"{text!r} is not a list of numbers", param_hint=option) from None
-    if len(values) < 2 or any(b <= a for a, b in zip(values, values[1:], strict=False)):
+    if len(values) < 2 or any(b <= a for a, b in itertools.pairwise(values)):
         raise click.BadParameter(
             f"{text!r} must hold two or more increasing numbers", param_hint=option
         )
