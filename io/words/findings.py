@@ -8,7 +8,7 @@ from backveer.io.readers.reading import FileReading
 from backveer.profiles.flags import FLAGS
 from backveer.profiles.stack import Stack
 
-# How each finding is said of "2 of 60 levels ..."; the flags that are no fault are said as they are.
+# What is said after "1 of 60 levels" and after "2 of 60 levels".
 SAID = {
     "wind_missing": ("has no wind", "have no wind"),
     "wind_outside_limits": ("has a wind outside limits", "have a wind outside limits"),
@@ -54,7 +54,7 @@ SAID = {
 
 
 def findings(file: FileReading) -> list[list[str]]:
-    """Return the remarks of each profile of a file: those of the file, then what its levels show."""
+    """Return the remarks of each profile: those of its file, then what its levels show."""
     found = [list(file.remarks) for _ in range(file.stack.profile_count)]
     for row, sentences in enumerate(level_findings(file.stack)):
         found[row].extend(sentences)
