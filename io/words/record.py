@@ -159,7 +159,9 @@ def plain(array: NDArray[Any], decimals: int | None = None) -> list[Any]:
     rounded = rounded + 0.0  # no negative zero
     if finite.all():
         return rounded.tolist()  # type: ignore[no-any-return]
-    return np.where(finite, rounded, None).tolist()  # type: ignore[no-any-return]
+    boxed = rounded.astype(object)
+    boxed[~finite] = None
+    return boxed.tolist()  # type: ignore[no-any-return]
 
 
 def _column(column: Any) -> dict[str, Any]:
