@@ -18,7 +18,7 @@ from typing import Any
 import numpy as np
 
 # Its stream is frozen for good, while that of numpy's newer generators may change.
-Random = np.random.RandomState  # noqa: NPY002
+Random = np.random.RandomState
 
 KNOT = 1852.0 / 3600.0  # m/s, by definition
 FOOT = 0.3048  # m, by definition
@@ -227,7 +227,7 @@ def ekman_turn() -> bytes:
 
 
 def _warm_advection(seed: int, place: dict[str, float], count: int) -> tuple[Any, ...]:
-    """Geostrophic wind that turns with height toward the warm side: air comes from warmer places."""
+    """Give a day on which the air comes from warmer places: the geostrophic wind turns aloft."""
     random = Random(seed)
     z = ascent(random, 10.0, 30.0, count)
     sense = np.sign(place["latitude"])  # the southern hemisphere is the mirror image
@@ -246,7 +246,7 @@ def _warm_advection(seed: int, place: dict[str, float], count: int) -> tuple[Any
 
 
 def warm_advection_south() -> bytes:
-    """Warm advection, southern hemisphere: the wind backs. Spanish, decimal comma, Latin-1, CRLF."""
+    """Warm advection in the south: the wind backs. Spanish, decimal comma, Latin-1, CRLF."""
     z, w, temperature, humidity, p = _warm_advection(202, SOUTH, 160)
     dew = dew_point(temperature, humidity)
     head = [
