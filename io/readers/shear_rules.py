@@ -85,7 +85,7 @@ def _rule(table: dict[str, Any], source: str) -> Rule:
         raise refuse("strict is neither true nor false", "Write true or false")
     units = _SHEARS if table["metric"] == "shear" else _SPEEDS
     quantities = {"threshold": units, "top": _HEIGHTS, "depth": _HEIGHTS}
-    numbers: dict[str, float] = {}
+    numbers: dict[str, Any] = {}
     unit = ""
     for key, among in quantities.items():
         text = table.get(key, "0 m" if key == "depth" else None)
@@ -97,7 +97,7 @@ def _rule(table: dict[str, Any], source: str) -> Rule:
             unit = match[2]
     if numbers["threshold"] <= 0 or numbers["top"] <= 0:
         raise refuse("threshold and top must be greater than zero", _FORM)
-    words = {key: str(table.get(key, "")) for key in _WORDS}
+    words: dict[str, Any] = {key: str(table.get(key, "")) for key in _WORDS}
     return Rule(
         **words,
         metric=table["metric"],
