@@ -125,8 +125,8 @@ def free_air(
         )
         values = [*mean[:4], mean[4] + ground, mean[5] + shear, mean[6] + both / 2.0]
     determined = determined & np.logical_and.reduce([np.isfinite(value) for value in values])
-    kept = [np.where(determined, value, np.nan) for value in (*values, last)]
-    return FreeAir(*kept, determined=determined, count=count)
+    kept: list[Any] = [np.where(determined, value, np.nan) for value in (*values, last)]
+    return FreeAir(*[*kept, determined, count])
 
 
 def _line(

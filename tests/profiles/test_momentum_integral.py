@@ -2,6 +2,7 @@
 
 from __future__ import annotations
 
+import leipzig
 import numpy as np
 import pytest
 import synthetic
@@ -11,15 +12,6 @@ from backveer.profiles.momentum_integral import (
     friction_velocity,
     logarithmic_share,
 )
-
-# Lettau (1950), Tellus 2, 125-129: z, u along and v to the left of the geostrophic wind, as
-# transcribed in a public script and recovered exactly (checks.md 1b, S2)
-LEIPZIG = """
-    50 9.15 4.35  100 10.45 4.64  150 11.58 4.80  200 12.60 4.95  250 13.48 4.96  300 14.30 4.90
-    350 14.97 4.78  400 15.62 4.60  450 16.28 4.29  500 16.83 4.00  550 17.30 3.71  600 17.70 3.37
-    650 17.99 3.07  700 18.23 2.73  750 18.42 2.43  800 18.60 2.06  850 18.66 1.70  900 18.68 1.31
-    950 18.62 0.91
-    """
 
 
 def integrate(z, wind, geostrophic, top, **more):
@@ -43,8 +35,7 @@ def test_leipzig_gives_lettaus_friction_velocity():
     f = 1.13e-4 and alpha0 = 26.1 degrees (from memory there) u*^2 cos(alpha0) = f times it gives
     0.658 m/s; Lettau has 0.65.
     """
-    z, u, v = np.array(LEIPZIG.split(), dtype=float).reshape(-1, 3).T
-    integral = integrate(z, u + 1j * v, 17.5 + 0j, 950.0)
+    integral = integrate(leipzig.Z, leipzig.U + 1j * leipzig.V, 17.5 + 0j, 950.0)
     across = integral.value.imag[0]
     assert across == pytest.approx(3442.0 - (0.9 - 0.8636) * 4.35 * 50.0, abs=1.0)
     u_star = np.sqrt(1.13e-4 * across / np.cos(np.radians(26.1)))
