@@ -3,7 +3,7 @@ The Leipzig wind profile, x along the geostrophic wind and y to its left.
 
 Lettau, H., 1950: A re-examination of the "Leipzig wind profile" considering some relations between
 wind and turbulence in the frictional layer. Tellus, 2, 125-129. As transcribed, scaled, in a public
-script; scaling back gives all 38 numbers to two decimals exactly (checks.md 1b, S2). Set-up, also
+script; scaling back gives all 38 numbers to two decimals exactly (second-hand). Set-up, also
 second-hand: geostrophic wind 17.5 m/s, f = 1.13e-4 s-1 (51.3 N), roughness length 0.3 m.
 """
 

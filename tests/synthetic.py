@@ -18,7 +18,7 @@ from scipy.integrate import solve_bvp
 from backveer.profiles.stack import Stack
 
 VON_KARMAN = 0.40  # Högström, 1996: Boundary-Layer Meteorol., 78, 215-246 (0.40 +- 0.01)
-OMEGA = 7.292115e-5  # rad s-1, WGS84 (NIMA/NGA); checks.md section 10
+OMEGA = 7.292115e-5  # rad s-1, WGS84 (NIMA/NGA)
 
 Viscosity = Callable[[Any, Any], Any]
 

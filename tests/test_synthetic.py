@@ -13,12 +13,12 @@ F = synthetic.coriolis_parameter(LATITUDE)
 
 
 def test_f_is_that_of_the_tables():
-    # 1.149253e-4 s-1 at 52 degrees, 2 Omega sin(latitude): derived, checks.md section 10
+    # 1.149253e-4 s-1 at 52 degrees, 2 Omega sin(latitude), by arithmetic
     assert synthetic.coriolis_parameter(52.0) == pytest.approx(1.149253e-4, abs=5e-11)
 
 
 def test_constant_viscosity_gives_the_ekman_spiral():
-    """Ekman (1905), u + i v = G (1 - exp(-(1 + i) z / delta)); numbers in checks.md 3a, exact."""
+    """Ekman (1905), u + i v = G (1 - exp(-(1 + i) z / delta)), exactly."""
     truth = synthetic.solve(10.0, LATITUDE, 1e-4, synthetic.constant(5.0))
     delta = np.sqrt(2 * 5.0 / F)
     z = np.linspace(1.0, 2000.0, 40)
@@ -92,7 +92,7 @@ def test_the_wall_is_logarithmic():
 @pytest.mark.parametrize(("speed", "roughness"), [(10.0, 1e-4), (10.0, 0.03), (20.0, 0.1)])
 def test_neutral_layers_follow_the_drag_law(speed, roughness):
     """
-    Geostrophic drag law with A = 1.8, B = 4.5 and with A = 0.8, B = 3.5 (checks.md section 4, S2).
+    Geostrophic drag law with A = 1.8, B = 4.5 and with A = 0.8, B = 3.5; both pairs second-hand.
 
     The pairs differ by 4 % in u* and by 5 degrees or more; the solver must come out between them.
     """

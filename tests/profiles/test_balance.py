@@ -17,7 +17,7 @@ SPEEDS = st.floats(-60.0, 60.0)
 
 
 def test_pressure_gradient_gives_the_printed_winds():
-    # Stull, Practical Meteorology (second-hand transcription, checks.md 3d, S2):
+    # Stull, Practical Meteorology (seen in a second-hand transcription; (S2) below means the same):
     # G1: density 1.2, f 1.1e-4, -2 kPa over 800 km northward -> Ug 18.94 m/s, Vg 0
     u, v = geostrophic_wind(0.0, -2000.0 / 800e3, 1.2, 1.1e-4)
     assert u == pytest.approx(18.94, abs=0.005)

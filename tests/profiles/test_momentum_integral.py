@@ -29,10 +29,10 @@ def integrate(z, wind, geostrophic, top, **more):
 
 def test_leipzig_gives_lettaus_friction_velocity():
     """
-    The integral of v: 3442 m2/s with 0-50 m taken at 0.9 v(50 m) (checks.md 1d, derived there).
+    The integral of v: 3442 m2/s with 0-50 m taken at 0.9 v(50 m) (derived from the table).
 
     Here 0-50 m follows the logarithmic law, 0.864 +- 0.046 of v(50 m): 8 m2/s less. With
-    f = 1.13e-4 and alpha0 = 26.1 degrees (from memory there) u*^2 cos(alpha0) = f times it gives
+    f = 1.13e-4 and alpha0 = 26.1 degrees (from memory) u*^2 cos(alpha0) = f times it gives
     0.658 m/s; Lettau has 0.65.
     """
     integral = integrate(leipzig.Z, leipzig.U + 1j * leipzig.V, 17.5 + 0j, 950.0)
@@ -43,14 +43,14 @@ def test_leipzig_gives_lettaus_friction_velocity():
 
 
 def test_analytic_spiral_gives_half_g_delta_both_ways():
-    """Integrals of v and of G - u are G delta / 2 each (checks.md 3a, exact)."""
+    """Integrals of v and of G - u are G delta / 2 each, exactly."""
     f, viscosity, speed = 1e-4, 5.0, 12.0
     delta = np.sqrt(2 * viscosity / f)
     z = np.concatenate([[1e-3], np.linspace(2.0, 30 * delta, 4000)])
     wind = speed * (1.0 - np.exp(-(1 + 1j) * z / delta))
     integral = integrate(z, wind, speed + 0j, 30 * delta)
     assert integral.value[0] == pytest.approx(speed * delta / 2 * (-1 + 1j), rel=1e-4)
-    # surface stress G sqrt(K f), 45 degrees to the left (checks.md 3a)
+    # surface stress G sqrt(K f), 45 degrees to the left
     u_star, _ = friction_velocity(f, integral.value, 0.0)
     assert u_star[0] ** 2 == pytest.approx(speed * np.sqrt(viscosity * f), rel=1e-4)
     stress = -1j * f * integral.value[0]
