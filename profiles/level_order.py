@@ -101,6 +101,14 @@ def _longest_ending_at(z: Floats) -> np.ndarray[tuple[int, ...], np.dtype[np.int
     return length
 
 
+def is_given(stack: Stack, name: str) -> bool:
+    """Say whether any level has a value of this variable, be it infinite; cheap where none has."""
+    array = getattr(stack, name)
+    if array.size and not any(array.strides):
+        array = array[:1, :1]
+    return not bool(np.isnan(array).all())
+
+
 def merge_duplicates(stack: Stack, good: Mapping[str, Bools]) -> Stack:
     """
     Replace levels that follow each other at the same height by their mean.
@@ -145,7 +153,7 @@ def merge_duplicates(stack: Stack, good: Mapping[str, Bools]) -> Stack:
     beyond = np.take_along_axis(same, order, axis=1)
     changed = {}
     for name, label in labels(stack).items():
-        if label.dims != ("profile", "level") or name == "level_flag" or not stack.has(name):
+        if label.dims != ("profile", "level") or name == "level_flag" or not is_given(stack, name):
             continue
         whole = np.array(getattr(stack, name))
         there = np.isfinite(whole[rows])
