@@ -12,6 +12,8 @@ P. V. Hobbs, 2006: Atmospheric Science, 2nd ed., ch. 3).
 
 from __future__ import annotations
 
+from typing import Any
+
 import numpy as np
 
 from backveer.profiles.earth import STANDARD_GRAVITY
@@ -293,7 +295,8 @@ def standard_temperature(geopotential_height: Floats) -> Floats:
     array([288.15, 271.9 , 216.65])
     """
     height, layer = _layer_of(geopotential_height)
-    return _TEMPERATURES[layer] + _LAPSES[layer] * (height - _STARTS[layer])
+    temperature: Floats = _TEMPERATURES[layer] + _LAPSES[layer] * (height - _STARTS[layer])
+    return temperature
 
 
 def standard_pressure(geopotential_height: Floats) -> Floats:
@@ -307,8 +310,8 @@ def standard_pressure(geopotential_height: Floats) -> Floats:
     >>> standard_pressure(np.array([0.0, 1000.0, 12000.0])).round(1)
     array([101325. ,  89874.6,  19330.4])
     """
-    height, layer = _layer_of(geopotential_height)
-    return _pressure_in(height, layer)
+    pressure: Floats = _pressure_in(*_layer_of(geopotential_height))
+    return pressure
 
 
 def standard_density(geopotential_height: Floats) -> Floats:
@@ -343,14 +346,14 @@ def standard_height(pressure: Floats) -> Floats:
     return np.where(inside, height, np.nan)
 
 
-def _layer_of(geopotential_height: Floats) -> tuple[Floats, Floats]:
+def _layer_of(geopotential_height: Floats) -> tuple[Any, Any]:
     height = np.asarray(geopotential_height, dtype=float)
     height = np.where((height >= _BASES[0]) & (height <= _CEILING), height, np.nan)
     layer = np.searchsorted(_BASES, np.where(np.isfinite(height), height, 0.0), side="right") - 1
     return height, layer
 
 
-def _pressure_in(height: Floats, layer: Floats) -> Floats:
+def _pressure_in(height: Any, layer: Any) -> Any:
     """Pressure in a layer, from its start up (ISO 2533:1975, equations of its section 2)."""
     lapse, start = _LAPSES[layer], _TEMPERATURES[layer]
     sloped = np.where(lapse == 0, 1.0, lapse)
