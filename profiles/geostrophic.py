@@ -336,7 +336,9 @@ def _stress(
         tail = np.where(well, amplitude / turn * np.exp(-turn * highest), 0.0)
         value = part.value + tail
         at_top = np.abs(at_height(z, wind - at_levels, highest[:, np.newaxis])[:, 0])
-        slipped = np.where(well, TAIL_DOUBT * np.abs(tail), at_top * depth_error)
+        noise = np.sqrt(2.0 * (chosen.ground_variance + error**2))  # of the vector
+        beyond_noise = np.sqrt(np.maximum(at_top**2 - noise**2, 0.0))
+        slipped = np.where(well, TAIL_DOUBT * np.abs(tail), beyond_noise * depth_error)
         of_evidence = (
             highest**2 * chosen.ground_variance
             + highest**4 / 4.0 * chosen.shear_variance
@@ -353,9 +355,7 @@ def _stress(
             ((highest < depth) & ~(np.abs(tail) <= LONGEST_TAIL * np.abs(value)), ENDS_BELOW),
             ((highest < depth) & ~well, ENDS_BELOW),
             (
-                (highest >= depth)
-                & (at_top > STILL_TURNING * speed)
-                & (at_top > FIRM * np.sqrt(chosen.ground_variance + error**2)),
+                (highest >= depth) & (at_top > STILL_TURNING * speed) & (at_top > FIRM * noise),
                 UNSTEADY,
             ),
             (~(np.abs(value) >= FIRM * doubt), WITHIN_ERROR),
