@@ -1,13 +1,8 @@
-r"""
-Moist air, hydrostatics and the standard atmosphere.
+"""
+Moist air, the thickness of a layer of it, and the standard atmosphere.
 
-Temperatures in K, pressures in Pa, mixing ratios and humidities as pure numbers. Hydrostatic steps
-follow the hypsometric equation with virtual temperature,
-
-.. math:: H_2 - H_1 = \frac{R_d \overline{T_v}}{g_0} \ln\frac{p_1}{p_2}
-
-in geopotential height, with the mean of :math:`T_v` over :math:`\ln p` (Wallace, J. M., and
-P. V. Hobbs, 2006: Atmospheric Science, 2nd ed., ch. 3).
+Every kernel is elementwise. Numbers without a meaning (no pressure, vapour above the pressure, at
+or below absolute zero) give NaN. What measures humidity is in humidity.py.
 """
 
 from __future__ import annotations
@@ -17,361 +12,348 @@ from typing import Any
 import numpy as np
 
 from backveer.profiles.earth import STANDARD_GRAVITY
-from backveer.profiles.labels import Floats
+from backveer.profiles.humidity import EPSILON, saturation_vapour_pressure
 
-DRY_GAS_CONSTANT = 287.05287  # J kg-1 K-1, ISO 2533:1975
-VAPOUR_RATIO = 0.62198  # ratio of molar masses of water and dry air, WMO-No. 8, Annex 4.B
-KAPPA = 2.0 / 7.0  # R / cp of a diatomic gas; 0.2857, Wallace and Hobbs 2006, ch. 3
-ZERO_CELSIUS = 273.15  # K, exact
+GAS_CONSTANT = 287.05287  # J kg-1 K-1, dry air: ISO 2533:1975
+    0.62198  # water vapour to dry air, molar masses: WMO-No. 49, Technical Regulations (memory)
+)
+KAPPA = 2.0 / 7.0  # R / cp of a diatomic ideal gas; air differs from it by 0.1 %
+HEAT_CAPACITY = GAS_CONSTANT / KAPPA  # J kg-1 K-1, at constant pressure
+DRY_ADIABATIC_LAPSE_RATE = STANDARD_GRAVITY / HEAT_CAPACITY  # K m-1
+REFERENCE_PRESSURE = 100000.0  # Pa, of potential temperature: by definition
 
-# Saturation over water, WMO-No. 8 (CIMO guide), Annex 4.B: ew = 6.112 exp(17.62 t/(243.12 + t)) hPa
-# (seen quoted in an instrument manual); good from -45 to 60 degrees Celsius.
-_E0, _A, _B = 611.2, 17.62, 243.12
+# IEC 61400-12-1, air density: as quoted in six public codes.
+IEC_DRY = 287.05  # J kg-1 K-1
+IEC_VAPOUR = 461.5  # J kg-1 K-1
+IEC_VAPOUR_PRESSURE = (0.0000205, 0.0631846)  # Pa, K-1
 
-# Standard atmosphere to 47 km: base of each layer in geopotential m, lapse rate in K/m
-# (ISO 2533:1975; U.S. Standard Atmosphere, 1976).
-_SEA_LEVEL_TEMPERATURE, _SEA_LEVEL_PRESSURE = 288.15, 101325.0
-_BASES = np.array([-5000.0, 11000.0, 20000.0, 32000.0])
-_LAPSES = np.array([-0.0065, 0.0, 0.001, 0.0028])
-_CEILING = 47000.0
-
-
-def saturation_vapour_pressure(temperature: Floats) -> Floats:
-    """
-    Vapour pressure at saturation over water, at radiosonde colds too as WMO reports it. [Pa].
-
-    WMO-No. 8, Annex 4.B: 6.112 exp(17.62 t / (243.12 + t)) hPa, t in degrees Celsius. Over water at
-    all temperatures, because dew points of soundings are reported so.
-
-    Examples
-    --------
-    >>> round(float(saturation_vapour_pressure(293.15)), 1)
-    2332.6
-    """
-    celsius = np.asarray(temperature, dtype=float) - ZERO_CELSIUS
-    with np.errstate(invalid="ignore", divide="ignore", over="ignore"):
-        pressure = _E0 * np.exp(_A * celsius / (_B + celsius))
-    return np.where(celsius > -_B, pressure, np.nan)
+# ISO 2533:1975: geopotential height of the base [m], temperature there [K], its gradient [K m-1].
+STANDARD_LAYERS = (
+    (0.0, 288.15, -0.0065), (11000.0, 216.65, 0.0), (20000.0, 216.65, 0.001),
+    (32000.0, 228.65, 0.0028), (47000.0, 270.65, 0.0), (51000.0, 270.65, -0.0028),
+    (71000.0, 214.65, -0.002),
+)  # fmt: skip
+STANDARD_PRESSURE = 101325.0  # Pa, ISO 2533:1975
+STANDARD_LIMITS = (-5000.0, 80000.0)  # m, what the tables of ISO 2533 and its addenda cover
 
 
-def dew_point(vapour_pressure: Floats) -> Floats:
-    """
-    Temperature at which a vapour pressure is saturation, the inverse of the formula above. [K].
-
-    NaN where the vapour pressure is not positive: dry air has no dew point.
-
-    Examples
-    --------
-    >>> round(float(dew_point(saturation_vapour_pressure(278.15))), 6)
-    278.15
-    """
-    vapour_pressure = np.asarray(vapour_pressure, dtype=float)
-    good = vapour_pressure > 0
-    logarithm = np.log(np.where(good, vapour_pressure, _E0) / _E0)
-    with np.errstate(divide="ignore", invalid="ignore"):
-        celsius = _B * logarithm / (_A - logarithm)
-    return np.where(good, celsius + ZERO_CELSIUS, np.nan)
-
-
-def dew_point_from_relative_humidity(temperature: Floats, relative_humidity: Floats) -> Floats:
-    """
-    Dew point from temperature and relative humidity over water, 0 to 1. [K].
-
-    Examples
-    --------
-    >>> round(float(dew_point_from_relative_humidity(288.15, 1.0)), 6)
-    288.15
-    """
-    return dew_point(np.asarray(relative_humidity) * saturation_vapour_pressure(temperature))
-
-
-def dew_point_from_mixing_ratio(mixing_ratio: Floats, pressure: Floats) -> Floats:
-    """Dew point from mixing ratio (kg of vapour per kg of dry air) and pressure. [K]."""
-    mixing_ratio = np.asarray(mixing_ratio, dtype=float)
-    return dew_point(pressure * mixing_ratio / (VAPOUR_RATIO + mixing_ratio))
-
-
-def dew_point_from_specific_humidity(specific_humidity: Floats, pressure: Floats) -> Floats:
-    """Dew point from specific humidity (kg of vapour per kg of moist air) and pressure. [K]."""
-    q = np.asarray(specific_humidity, dtype=float)
-    return dew_point_from_mixing_ratio(q / (1.0 - q), pressure)
-
-
-def mixing_ratio(dew_point_temperature: Floats, pressure: Floats) -> Floats:
+def virtual_temperature(temperature: Any, dew_point: Any, pressure: Any) -> Any:
     r"""
-    Mass of vapour per mass of dry air. [1].
-
-    .. math:: r = \varepsilon \frac{e}{p - e}
-
-    NaN where the vapour pressure would reach the pressure.
-    """
-    e = saturation_vapour_pressure(dew_point_temperature)
-    with np.errstate(divide="ignore", invalid="ignore"):
-        return np.where(e < pressure, VAPOUR_RATIO * e / (pressure - e), np.nan)
-
-
-def virtual_temperature(temperature: Floats, mixing_ratio: Floats) -> Floats:
-    r"""
-    Temperature of dry air of the same density. [K].
-
-    .. math:: T_v = T \frac{r + \varepsilon}{\varepsilon (1 + r)}
-
-    Examples
-    --------
-    >>> round(float(virtual_temperature(283.0, 0.012)), 2)
-    285.04
-    """
-    r = np.asarray(mixing_ratio, dtype=float)
-    return temperature * (r + VAPOUR_RATIO) / (VAPOUR_RATIO * (1.0 + r))
-
-
-def virtual_temperature_of(temperature: Floats, dew_point: Floats, pressure: Floats) -> Floats:
-    """
-    Virtual temperature of a level; dry air is taken where the dew point is missing. [K].
-
-    Without humidity the thickness is too small by at most 0.6 per cent in the wettest air and
-    0.2 per cent at a mixing ratio of 3 g/kg.
-    """
-    r = mixing_ratio(dew_point, pressure)
-    return virtual_temperature(temperature, np.where(np.isfinite(r), r, 0.0))
-
-
-def potential_temperature(temperature: Floats, pressure: Floats) -> Floats:
-    r"""
-    Temperature of air brought to 1000 hPa without heat. [K].
-
-    .. math:: \theta = T (p_0 / p)^{\kappa}
-
-    Examples
-    --------
-    >>> round(float(potential_temperature(278.0, 90000.0)), 2)
-    286.5
-    """
-    pressure = np.asarray(pressure, dtype=float)
-    good = pressure > 0
-    return np.where(good, temperature * (100000.0 / np.where(good, pressure, 1e5)) ** KAPPA, np.nan)
-
-
-def virtual_potential_temperature(
-    temperature: Floats, dew_point: Floats, pressure: Floats
-) -> Floats:
-    """Potential temperature of the virtual temperature; dry where the dew point is missing. [K]."""
-    return potential_temperature(virtual_temperature_of(temperature, dew_point, pressure), pressure)
-
-
-def density(pressure: Floats, virtual_temperature: Floats) -> Floats:
-    r"""
-    Density of moist air. [kg m-3].
-
-    .. math:: \rho = p / (R_d T_v)
-    """
-    with np.errstate(divide="ignore", invalid="ignore"):
-        return np.asarray(pressure) / (DRY_GAS_CONSTANT * np.asarray(virtual_temperature))
-
-
-def iec_air_density(temperature: Floats, pressure: Floats, relative_humidity: Floats) -> Floats:
-    r"""
-    Density of moist air by the formula of IEC 61400-12-1. [kg m-3].
+    Virtual temperature, that of dry air of the same density.
 
     Parameters
     ----------
-    temperature, pressure : array
-        [K], [Pa]
+    temperature, dew_point : array
+        [K]
+    pressure : array
+        [Pa]
+
+    Returns
+    -------
+    virtual_temperature : array
+        :math:`T_v = T / [1 - (1 - \epsilon) e / p]`, from the ideal gas law for both gases; NaN
+        where the dew point is missing. [K]
+
+    Examples
+    --------
+    >>> virtual_temperature(303.15, 298.15, 100000.0).round(2)
+    np.float64(306.82)
+    """
+    t, p = np.asarray(temperature, dtype=float), np.asarray(pressure, dtype=float)
+    e = saturation_vapour_pressure(dew_point)
+    with np.errstate(invalid="ignore", divide="ignore", over="ignore"):
+        tv = t / (1.0 - (1.0 - EPSILON) * (e / p))
+        return np.where((e < p) & (t > 0), tv, np.nan)[()]
+
+
+def potential_temperature(temperature: Any, pressure: Any) -> Any:
+    r"""
+    Potential temperature :math:`\theta = T (1000\,\mathrm{hPa} / p)^{R / c_p}`.
+
+    Parameters
+    ----------
+    temperature : array
+        Of air, or its virtual temperature. [K]
+    pressure : array
+        [Pa]
+
+    Returns
+    -------
+    theta : array
+        [K]
+
+    Examples
+    --------
+    >>> potential_temperature(283.15, 70000.0).round(2)
+    np.float64(313.53)
+    """
+    t, p = np.asarray(temperature, dtype=float), np.asarray(pressure, dtype=float)
+    with np.errstate(invalid="ignore", divide="ignore", over="ignore"):
+        theta = t * (REFERENCE_PRESSURE / p) ** KAPPA
+        return np.where((p > 0) & (t > 0), theta, np.nan)[()]
+
+
+def virtual_potential_temperature(temperature: Any, dew_point: Any, pressure: Any) -> Any:
+    """
+    Virtual potential temperature, the potential temperature of the virtual temperature.
+
+    Parameters
+    ----------
+    temperature, dew_point : array
+        [K]
+    pressure : array
+        [Pa]
+
+    Returns
+    -------
+    theta_v : array
+        [K]
+
+    Examples
+    --------
+    >>> virtual_potential_temperature(283.15, 279.15, 70000.0).round(2)
+    np.float64(315.12)
+    """
+    tv = virtual_temperature(temperature, dew_point, pressure)
+    return potential_temperature(tv, pressure)
+
+
+def density(pressure: Any, virtual_temperature: Any) -> Any:
+    r"""
+    Density of air, :math:`\rho = p / (R T_v)`.
+
+    Parameters
+    ----------
+    pressure : array
+        [Pa]
+    virtual_temperature : array
+        The temperature itself for dry air. [K]
+
+    Returns
+    -------
+    density : array
+        [kg m-3]
+
+    Examples
+    --------
+    >>> density(101325.0, 288.15).round(4)
+    np.float64(1.225)
+    """
+    p, tv = np.asarray(pressure, dtype=float), np.asarray(virtual_temperature, dtype=float)
+    with np.errstate(invalid="ignore", divide="ignore", over="ignore"):
+        return np.where((p >= 0) & (tv > 0), p / (GAS_CONSTANT * tv), np.nan)[()]
+
+
+def iec_air_density(temperature: Any, pressure: Any, relative_humidity: Any) -> Any:
+    r"""
+    Air density as power performance measurements define it.
+
+    Parameters
+    ----------
+    temperature : array
+        [K]
+    pressure : array
+        [Pa]
     relative_humidity : array
-        0 to 1.
+        As a fraction, 0 to 1. [1]
+
+    Returns
+    -------
+    density : array
+        [kg m-3]
 
     Notes
     -----
     .. math::
+        \rho = \frac{1}{T} \left[\frac{B}{R_0} - \phi P_w \left(\frac{1}{R_0} - \frac{1}{R_w}\right)
+        \right], \qquad P_w = 0.0000205\,\mathrm{Pa}\, \exp(0.0631846\, T)
 
-        \rho = \frac{1}{T}\left[\frac{B}{R_0} - \phi P_w
-        \left(\frac{1}{R_0} - \frac{1}{R_w}\right)\right], \qquad
-        P_w = 0.0000205 \exp(0.0631846\,T)
-
-    with :math:`R_0 = 287.05`, :math:`R_w = 461.5` J kg-1 K-1 (IEC 61400-12-1, quoted in public
-    codes; the standard itself was not opened).
-
-    Examples
-    --------
-    >>> round(float(iec_air_density(288.15, 101325.0, 0.5)), 5)
-    1.22123
-    """
-    temperature = np.asarray(temperature, dtype=float)
-    dry, vapour = 287.05, 461.5
-    with np.errstate(over="ignore", divide="ignore", invalid="ignore"):
-        saturation = 0.0000205 * np.exp(0.0631846 * temperature)
-        return (
-            pressure / dry - relative_humidity * saturation * (1 / dry - 1 / vapour)
-        ) / temperature
-
-
-def thickness(virtual_temperature: Floats, pressure_base: Floats, pressure_top: Floats) -> Floats:
-    """
-    Geopotential thickness of a layer with the given mean virtual temperature. [m].
-
-    The hypsometric equation of the module; positive where the top has the lower pressure.
+    References
+    ----------
+    IEC 61400-12-1, Wind energy generation systems: power performance measurements of electricity
+    producing wind turbines (as quoted in six public codes).
 
     Examples
     --------
-    >>> round(float(thickness(273.0, 100000.0, 50000.0)))
-    5539
+    >>> iec_air_density(288.15, 101325.0, np.array([0.0, 0.5, 1.0])).round(5)
+    array([1.22501, 1.22123, 1.21745])
     """
-    with np.errstate(divide="ignore", invalid="ignore"):
-        ratio = np.log(np.asarray(pressure_base, dtype=float) / pressure_top)
-    return DRY_GAS_CONSTANT * virtual_temperature / STANDARD_GRAVITY * ratio
+    t, b = np.asarray(temperature, dtype=float), np.asarray(pressure, dtype=float)
+    factor, exponent = IEC_VAPOUR_PRESSURE
+    with np.errstate(invalid="ignore", divide="ignore", over="ignore", under="ignore"):
+        vapour = np.asarray(relative_humidity, dtype=float) * (factor * np.exp(exponent * t))
+        rho = (b / IEC_DRY - vapour * (1.0 / IEC_DRY - 1.0 / IEC_VAPOUR)) / t
+        return np.where(t > 0, rho, np.nan)[()]
 
 
-def heights_from_pressure(
-    pressure: Floats, virtual_temperature: Floats, base_height: Floats
-) -> Floats:
+def scale_height(virtual_temperature: Any) -> Any:
     """
-    Geopotential heights of levels, upward from the lowest one.
+    Height over which the pressure falls by a factor e in isothermal air, R Tv / g.
 
     Parameters
     ----------
-    pressure, virtual_temperature : array, shape (..., level)
-        Compact: the levels of a profile stand together at its front, from the ground up, NaN beyond
-        the last (:func:`backveer.profiles.grid.compact`). [Pa], [K]
-    base_height : array, shape (...)
-        Geopotential height of the lowest level. [m]
+    virtual_temperature : array
+        [K]
 
     Returns
     -------
-    height : array, shape (..., level)
-        Virtual temperature is linear in ln p between levels; NaN beyond the last level. [m]
+    scale_height : array
+        In geopotential metres. [m]
 
     Examples
     --------
-    >>> heights_from_pressure(np.array([1e5, 5e4]), np.array([273.0, 273.0]), 100.0).round()
-    array([ 100., 5639.])
+    >>> scale_height(273.15).round(1)
+    np.float64(7995.4)
     """
-    pressure, tv = np.asarray(pressure, dtype=float), np.asarray(virtual_temperature, dtype=float)
-    steps = thickness(0.5 * (tv[..., 1:] + tv[..., :-1]), pressure[..., :-1], pressure[..., 1:])
-    base = np.asarray(base_height, dtype=float)[..., np.newaxis]
-    base = np.broadcast_to(base, (*steps.shape[:-1], 1))
-    above = np.add.accumulate(np.concatenate([base, steps], axis=-1), axis=-1)
-    return np.where(np.isfinite(pressure) & np.isfinite(tv), above, np.nan)
+    return GAS_CONSTANT * np.asarray(virtual_temperature, dtype=float) / STANDARD_GRAVITY
 
 
-def pressures_from_height(
-    height: Floats, virtual_temperature: Floats, base_pressure: Floats
-) -> Floats:
-    """
-    Pressures of levels, upward from the lowest one.
+def thickness(base_pressure: Any, top_pressure: Any, virtual_temperature: Any) -> Any:
+    r"""
+    Thickness of a layer, :math:`\Delta H = (R T_v / g) \ln(p_1 / p_2)` (hypsometric equation).
 
     Parameters
     ----------
-    height, virtual_temperature : array, shape (..., level)
-        Geopotential heights and virtual temperature, compact as in :func:`heights_from_pressure`.
-        [m], [K]
-    base_pressure : array, shape (...)
-        Pressure of the lowest level. [Pa]
+    base_pressure, top_pressure : array
+        [Pa]
+    virtual_temperature : array
+        Mean of the layer, over ln p. [K]
 
     Returns
     -------
-    pressure : array, shape (..., level)
-        By the hypsometric equation with the mean of the two virtual temperatures, so that it is the
-        inverse of :func:`heights_from_pressure`. [Pa]
-    """
-    height, tv = np.asarray(height, dtype=float), np.asarray(virtual_temperature, dtype=float)
-    mean = 0.5 * (tv[..., 1:] + tv[..., :-1])
-    with np.errstate(divide="ignore", invalid="ignore"):
-        steps = -STANDARD_GRAVITY * np.diff(height, axis=-1) / (DRY_GAS_CONSTANT * mean)
-        base = np.log(np.asarray(base_pressure, dtype=float))[..., np.newaxis]
-    base = np.broadcast_to(base, (*steps.shape[:-1], 1))
-    above = np.exp(np.add.accumulate(np.concatenate([base, steps], axis=-1), axis=-1))
-    return np.where(np.isfinite(height) & np.isfinite(tv), above, np.nan)
-
-
-def standard_temperature(geopotential_height: Floats) -> Floats:
-    """
-    Temperature of the standard atmosphere, -5 to 47 km; NaN outside. [K].
-
-    ISO 2533:1975.
+    thickness : array
+        In geopotential metres, positive where the top has the lower pressure. [m]
 
     Examples
     --------
-    >>> standard_temperature(np.array([0.0, 2500.0, 12000.0]))
-    array([288.15, 271.9 , 216.65])
+    >>> thickness(100000.0, 50000.0, 273.15).round(1)
+    np.float64(5542.0)
     """
-    height, layer = _layer_of(geopotential_height)
-    temperature: Floats = _TEMPERATURES[layer] + _LAPSES[layer] * (height - _STARTS[layer])
-    return temperature
+    p1, p2 = np.asarray(base_pressure, dtype=float), np.asarray(top_pressure, dtype=float)
+    with np.errstate(invalid="ignore", divide="ignore", over="ignore"):
+        step = np.where((p1 > 0) & (p2 > 0), np.log(p1 / p2), np.nan)
+        return scale_height(virtual_temperature) * step
 
 
-def standard_pressure(geopotential_height: Floats) -> Floats:
-    """
-    Pressure of the standard atmosphere, -5 to 47 km; NaN outside. [Pa].
+def standard_atmosphere(geopotential_height: Any) -> tuple[Any, Any]:
+    r"""
+    Temperature and pressure of the standard atmosphere.
 
-    ISO 2533:1975.
+    Parameters
+    ----------
+    geopotential_height : array
+        -5 to 80 km; NaN comes back outside. [m]
+
+    Returns
+    -------
+    temperature, pressure : array
+        [K], [Pa]
+
+    Notes
+    -----
+    In a layer with a constant gradient :math:`\beta = dT/dH`,
+
+    .. math::
+        T = T_b + \beta (H - H_b), \qquad
+        p = p_b (T / T_b)^{-g / (R \beta)} \ \text{or} \
+        p_b \exp\left[-\frac{g (H - H_b)}{R T_b}\right] \text{ for } \beta = 0
+
+    References
+    ----------
+    ISO 2533:1975, Standard Atmosphere; ICAO Doc 7488.
 
     Examples
     --------
-    >>> standard_pressure(np.array([0.0, 1000.0, 12000.0])).round(1)
-    array([101325. ,  89874.6,  19330.4])
+    >>> t, p = standard_atmosphere(np.array([0.0, 5000.0, 12000.0]))
+    >>> t.round(2), p.round(1)
+    (array([288.15, 255.65, 216.65]), array([101325. ,  54019.9,  19330.4]))
     """
-    pressure: Floats = _pressure_in(*_layer_of(geopotential_height))
-    return pressure
+    h = np.asarray(geopotential_height, dtype=float)
+    with np.errstate(invalid="ignore"):
+        h = np.where((h >= STANDARD_LIMITS[0]) & (h <= STANDARD_LIMITS[1]), h, np.nan)
+        temperature = pressure = np.full(h.shape, np.nan)
+        for number, ((base, t_base, gradient), p_base) in enumerate(_STANDARD_BASES):
+            # The lowest layer goes on below the sea, each other one begins at its base.
+            here = np.isfinite(h) if number == 0 else h >= base
+            t = t_base + gradient * (h - base)
+            if gradient:
+                p = p_base * (t / t_base) ** (-STANDARD_GRAVITY / (GAS_CONSTANT * gradient))
+            else:
+                p = p_base * np.exp(-(h - base) / scale_height(t_base))
+            temperature, pressure = np.where(here, t, temperature), np.where(here, p, pressure)
+    return temperature[()], pressure[()]
 
 
-def standard_density(geopotential_height: Floats) -> Floats:
-    """Density of the standard atmosphere, -5 to 47 km; NaN outside (ISO 2533:1975). [kg m-3]."""
-    return density(
-        standard_pressure(geopotential_height), standard_temperature(geopotential_height)
-    )
-
-
-def standard_height(pressure: Floats) -> Floats:
+def standard_density(geopotential_height: Any) -> Any:
     """
-    Geopotential height at which the standard atmosphere has a pressure; NaN outside. [m].
+    Air density of the standard atmosphere.
 
-    ISO 2533:1975; the pressure altitude behind flight levels.
+    Parameters
+    ----------
+    geopotential_height : array
+        [m]
+
+    Returns
+    -------
+    density : array
+        [kg m-3]
 
     Examples
     --------
-    >>> standard_height(np.array([101325.0, 89874.6])).round(1)
-    array([   0., 1000.])
+    >>> standard_density(np.array([0.0, 10000.0])).round(5)
+    array([1.225  , 0.41271])
     """
-    pressure = np.asarray(pressure, dtype=float)
-    inside = (pressure <= _TOP_AND_FLOOR[1]) & (pressure >= _TOP_AND_FLOOR[0])
-    ratio = np.where(inside, pressure, _SEA_LEVEL_PRESSURE)
-    layer = np.clip(np.searchsorted(-_PRESSURES, -ratio, side="right") - 1, 0, len(_BASES) - 1)
-    lapse = _LAPSES[layer]
-    sloped = np.where(lapse == 0, 1.0, lapse)
-    gas = DRY_GAS_CONSTANT / STANDARD_GRAVITY
-    logarithm = np.log(ratio / _PRESSURES[layer])
-    isothermal = -gas * _TEMPERATURES[layer] * logarithm
-    with_lapse = _TEMPERATURES[layer] / sloped * np.expm1(-gas * sloped * logarithm)
-    height = _STARTS[layer] + np.where(lapse == 0, isothermal, with_lapse)
-    return np.where(inside, height, np.nan)
+    temperature, pressure = standard_atmosphere(geopotential_height)
+    return density(pressure, temperature)
 
 
-def _layer_of(geopotential_height: Floats) -> tuple[Any, Any]:
-    height = np.asarray(geopotential_height, dtype=float)
-    height = np.where((height >= _BASES[0]) & (height <= _CEILING), height, np.nan)
-    layer = np.searchsorted(_BASES, np.where(np.isfinite(height), height, 0.0), side="right") - 1
-    return height, layer
+def standard_height(pressure: Any) -> Any:
+    """
+    Geopotential height of a pressure in the standard atmosphere, inverse of the above.
+
+    Parameters
+    ----------
+    pressure : array
+        [Pa]
+
+    Returns
+    -------
+    geopotential_height : array
+        Pressure altitude; NaN outside -5 to 80 km. [m]
+
+    Examples
+    --------
+    >>> standard_height(np.array([97520.0, 22632.0, 1000.0])).round(1)
+    array([  321.7, 11000. , 31054.6])
+    """
+    p = np.asarray(pressure, dtype=float)
+    height = np.full(p.shape, np.nan)
+    with np.errstate(invalid="ignore", divide="ignore", over="ignore"):
+        for number, ((base, t_base, gradient), p_base) in enumerate(_STANDARD_BASES):
+            here = p > 0 if number == 0 else p <= p_base
+            if gradient:
+                ratio = (p / p_base) ** (-GAS_CONSTANT * gradient / STANDARD_GRAVITY)
+                h = base + t_base / gradient * (ratio - 1.0)
+            else:
+                h = base - scale_height(t_base) * np.log(p / p_base)
+            height = np.where(here, h, height)
+        inside = (p > 0) & (height >= STANDARD_LIMITS[0]) & (height <= STANDARD_LIMITS[1])
+        return np.where(inside, height, np.nan)[()]
 
 
-def _pressure_in(height: Any, layer: Any) -> Any:
-    """Pressure in a layer, from its start up (ISO 2533:1975, equations of its section 2)."""
-    lapse, start = _LAPSES[layer], _TEMPERATURES[layer]
-    sloped = np.where(lapse == 0, 1.0, lapse)
-    rise = height - _STARTS[layer]
-    exponent = STANDARD_GRAVITY / DRY_GAS_CONSTANT
-    isothermal = np.exp(-exponent * rise / start)
-    with_lapse = (1.0 + sloped * rise / start) ** (-exponent / sloped)
-    return _PRESSURES[layer] * np.where(lapse == 0, isothermal, with_lapse)
+def _standard_bases() -> tuple[tuple[tuple[float, float, float], float], ...]:
+    """Each layer of the standard atmosphere with the pressure at its base."""
+    found, pressure = [], STANDARD_PRESSURE
+    for layer, above in zip(STANDARD_LAYERS, (*STANDARD_LAYERS[1:], None), strict=True):
+        found.append((layer, pressure))
+        if above is None:
+            break
+        if layer[2]:
+            exponent = -STANDARD_GRAVITY / (GAS_CONSTANT * layer[2])
+            pressure *= (above[1] / layer[1]) ** exponent
+        else:
+            pressure *= float(np.exp(-(above[0] - layer[0]) / scale_height(layer[1])))
+    return tuple(found)
 
 
-# The lowest layer is reckoned from sea level, the others from their bases.
-_STARTS = np.array([0.0, *_BASES[1:]])
-_TEMPERATURES = np.full(len(_BASES), _SEA_LEVEL_TEMPERATURE)
-_PRESSURES = np.full(len(_BASES), _SEA_LEVEL_PRESSURE)
-for _i in range(1, len(_BASES)):
-    _TEMPERATURES[_i] = _TEMPERATURES[_i - 1] + _LAPSES[_i - 1] * (_STARTS[_i] - _STARTS[_i - 1])
-    _PRESSURES[_i] = _pressure_in(_STARTS[_i], np.intp(_i - 1))
-_TOP_AND_FLOOR = (
-    float(_pressure_in(np.float64(_CEILING), np.intp(len(_BASES) - 1))),
-    float(_pressure_in(_BASES[0], np.intp(0))),
-)
+_STANDARD_BASES = _standard_bases()

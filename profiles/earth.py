@@ -1,265 +1,423 @@
-r"""
-The rotating earth: Coriolis parameter, the terms its horizontal form leaves out, gravity, heights.
+"""
+The rotating, flattened Earth: Coriolis acceleration, gravity and geopotential.
 
-The Coriolis acceleration of a wind (u eastward, v northward, w upward) at latitude
-:math:`\varphi` (Holton, J. R., 2004: An Introduction to Dynamic Meteorology, 4th ed., ch. 2)
-
-.. math::
-
-    a_x = f v - \hat f w, \qquad a_y = -f u, \qquad a_z = \hat f u
-
-with :math:`f = 2 \Omega \sin\varphi`, negative in the southern hemisphere and zero at the equator,
-and its horizontal counterpart :math:`\hat f = 2 \Omega \cos\varphi`.
+The mirror holds exactly: latitude to -latitude with v to -v mirrors every answer. A latitude
+outside -90 to 90 degrees gives NaN here, for one bad profile must not stop the others; the readers
+refuse it, and :func:`coriolis` says why.
 """
 
 from __future__ import annotations
 
 from dataclasses import dataclass
+from typing import Any
 
 import numpy as np
 
 from backveer.profiles.labels import Bools, Floats, Labelled, Words, variable
 from backveer.profiles.stack import Stack
 
-OMEGA = 7.292115e-5  # s-1, WGS84 (NIMA TR8350.2; seen quoted in OEIS A125126)
-STANDARD_GRAVITY = 9.80665  # m s-2, ISO 2533:1975
-STANDARD_RADIUS = 6356766.0  # m, U.S. Standard Atmosphere, 1976, NOAA/NASA/USAF
+OMEGA = 7.292115e-5  # s-1, angular velocity: NIMA, 2000, TR8350.2 (WGS84), 7292115.0e-11
+STANDARD_GRAVITY = 9.80665  # m s-2, ISO 2533:1975; also the unit of the geopotential metre
+EARTH_RADIUS = 6356766.0  # m, nominal, for geopotential height: ISO 2533:1975
+# WGS84, NIMA, 2000, TR8350.2, Department of Defense World Geodetic System 1984, tables 3.1 to 3.4.
+EQUATORIAL_GRAVITY = 9.7803253359  # m s-2
+SOMIGLIANA = 0.00193185265241  # the theoretical (normal) gravity formula constant
+ECCENTRICITY_SQUARED = 0.00669437999013
+SEMI_MAJOR_AXIS = 6378137.0  # m
+FLATTENING = 1.0 / 298.257223563
+GRAVITY_RATIO = 0.00344978650684  # omega^2 a^2 b / GM (from memory)
 
-# WGS84 normal gravity, formula of Somigliana (NIMA TR8350.2; constants seen in a transcription).
-_GRAVITY_AT_EQUATOR = 9.7803253359  # m s-2
-_GRAVITY_SLOPE = 0.00193185265241
-_ECCENTRICITY_SQUARED = 0.00669437999013
-_SEMI_MAJOR_AXIS = 6378137.0  # m
-_FLATTENING = 1 / 298.257223563
-_CENTRIFUGAL_RATIO = 0.00344978650684  # m of NIMA TR8350.2 (from memory)
-
+# Common practice: within 5 degrees of the equator the wind is far from geostrophic.
+EQUATOR_LIMIT = 5.0
 NO_LATITUDE = "the latitude is not known"
-OUTSIDE = "the latitude lies outside -90 to 90 degrees"
+BAD_LATITUDE = "the latitude lies outside -90 to 90 degrees"
 
 
 @dataclass(frozen=True, eq=False)
 class Coriolis(Labelled):
-    """The Coriolis parameter of each profile, and whether what divides by it may be asked."""
+    """The Coriolis parameter of each profile, and whether an analysis may divide by it."""
 
     coriolis_parameter: Floats = variable(
-        "s-1", "profile", "2 Omega sin(latitude), negative in the south", "coriolis_parameter"
+        "s-1",
+        "profile",
+        "f = 2 Omega sin(latitude), negative in the southern hemisphere",
+        "coriolis_parameter",
     )
     horizontal_coriolis_parameter: Floats = variable(
-        "s-1", "profile", "2 Omega cos(latitude), in the terms that the horizontal form leaves out"
+        "s-1", "profile", "2 Omega cos(latitude), never negative"
     )
-    inertial_period: Floats = variable("s", "profile", "2 pi / |f|")
-    applies: Bools = variable("1", "profile", "analyses that divide by f may be asked")
+    inertial_period: Floats = variable("s", "profile", "2 pi / |f|, missing on the equator")
+    applies: Bools = variable("", "profile", "whether analyses that divide by f are made")
     why: Words = variable("", "profile", "why they decline")
-    equator_limit: float = 5.0
+    equator_limit: float = EQUATOR_LIMIT
 
 
-def coriolis(stack: Stack, equator_limit: float = 5.0) -> Coriolis:
-    """
-    Coriolis parameter of each profile.
-
-    Parameters
-    ----------
-    stack
-        Profiles with a latitude.
-    equator_limit
-        Within this latitude the analyses that divide by f decline: there the balance they rest on
-        is not that of the air (common practice, no source). [degree]
-
-    Returns
-    -------
-    Coriolis
-        ``coriolis_parameter`` is given at every known latitude; ``inertial_period`` is NaN on the
-        equator.
-    """
-    latitude = np.where(np.abs(stack.latitude) <= 90, stack.latitude, np.nan)
-    f = coriolis_parameter(latitude)
-    applies = np.abs(latitude) > equator_limit
-    near = f"the site is within {equator_limit:g} degrees of the equator, where f vanishes"
-    why = np.select(
-        [np.isnan(stack.latitude), np.isnan(latitude), ~applies], [NO_LATITUDE, OUTSIDE, near], ""
-    )
-    return Coriolis(
-        coriolis_parameter=f,
-        horizontal_coriolis_parameter=horizontal_coriolis_parameter(latitude),
-        inertial_period=inertial_period(latitude),
-        applies=applies,
-        why=why.astype(object),
-        equator_limit=float(equator_limit),
-    )
-
-
-def coriolis_parameter(latitude: Floats) -> Floats:
+@dataclass(frozen=True, eq=False)
+class NeglectedTerms:
     r"""
-    Coriolis parameter f. [s-1].
+    What the horizontal form of the Coriolis acceleration leaves out, and how much that is.
+
+    Attributes
+    ----------
+    eastward
+        :math:`-2 \Omega w \cos\phi`, left out of the eastward equation. [m s-2]
+    eastward_fraction
+        Its size beside that of :math:`2 \Omega v \sin\phi`, which is kept; NaN where that is 0.
+    upward
+        :math:`2 \Omega u \cos\phi`, left out of the vertical equation. [m s-2]
+    upward_fraction
+        Its size beside that of gravity.
+    """
+
+    eastward: Floats
+    eastward_fraction: Floats
+    upward: Floats
+    upward_fraction: Floats
+
+
+def coriolis_parameter(latitude: Any) -> Any:
+    r"""
+    Coriolis parameter :math:`f = 2 \Omega \sin\phi`.
 
     Parameters
     ----------
     latitude : array
-        North positive. [degree]
+        North positive; NaN comes back outside -90 to 90. [degree]
 
-    Notes
-    -----
-    .. math:: f = 2 \Omega \sin\varphi
+    Returns
+    -------
+    f : array
+        Positive in the northern hemisphere, negative in the southern, 0 on the equator. [s-1]
 
     Examples
     --------
-    >>> coriolis_parameter(np.array([-30.0, 0.0, 45.0])).round(9)
-    array([-7.29210e-05,  0.00000e+00,  1.03126e-04])
+    >>> coriolis_parameter(np.array([30.0, -30.0, 0.0]))
+    array([ 7.292115e-05, -7.292115e-05,  0.000000e+00])
     """
-    return 2.0 * OMEGA * np.sin(np.radians(latitude))
+    return 2.0 * OMEGA * np.sin(_radians(latitude))
 
 
-def horizontal_coriolis_parameter(latitude: Floats) -> Floats:
+def horizontal_coriolis_parameter(latitude: Any) -> Any:
     r"""
-    Horizontal counterpart of f, the same in both hemispheres. [s-1].
+    Horizontal counterpart of the Coriolis parameter, :math:`2 \Omega \cos\phi`.
 
-    .. math:: \hat f = 2 \Omega \cos\varphi
+    Parameters
+    ----------
+    latitude : array
+        North positive; NaN comes back outside -90 to 90. [degree]
+
+    Returns
+    -------
+    parameter : array
+        Never negative, 0 at the poles, largest on the equator. [s-1]
+
+    Examples
+    --------
+    >>> horizontal_coriolis_parameter(np.array([60.0, -60.0, 90.0]))
+    array([7.292115e-05, 7.292115e-05, 0.000000e+00])
     """
-    return 2.0 * OMEGA * np.cos(np.radians(latitude))
+    radians = _radians(latitude)
+    # pi / 2 is no floating-point number: its cosine is 6e-17, and the pole has none.
+    cosine = np.where(np.abs(radians) == np.pi / 2.0, 0.0, np.cos(radians))
+    return 2.0 * OMEGA * cosine
 
 
-def coriolis_acceleration(
-    u: Floats, v: Floats, w: Floats, latitude: Floats
-) -> tuple[Floats, Floats, Floats]:
-    """
-    All three components of the Coriolis acceleration.
+def coriolis_acceleration(u: Any, v: Any, w: Any, latitude: Any) -> tuple[Any, Any, Any]:
+    r"""
+    Coriolis acceleration of moving air, with all its terms.
 
     Parameters
     ----------
     u, v, w : array
-        Wind toward east, north and up. [m s-1]
+        Wind toward east, toward north and upward. [m s-1]
     latitude : array
         North positive. [degree]
 
     Returns
     -------
     eastward, northward, upward : array
-        An eastward wind in the north is accelerated southward and upward. [m s-2]
+        [m s-2]
+
+    Notes
+    -----
+    The components of :math:`-2 \mathbf{\Omega} \times \mathbf{v}` with
+    :math:`\mathbf{\Omega} = \Omega (0, \cos\phi, \sin\phi)`:
+
+    .. math::
+        a_x &= 2 \Omega (v \sin\phi - w \cos\phi) \\
+        a_y &= -2 \Omega u \sin\phi \\
+        a_z &= 2 \Omega u \cos\phi
+
+    A wind toward the east in the northern hemisphere is accelerated southward and upward. Moving
+    air is never given energy: the acceleration is at right angles to the motion.
+
+    References
+    ----------
+    Coriolis, G.-G., 1835: Mémoire sur les équations du mouvement relatif des systèmes de corps.
+    J. École Polytechnique, 15, 144-154 (from memory).
 
     Examples
     --------
-    >>> east, north, up = coriolis_acceleration(10.0, 0.0, 0.0, 45.0)
-    >>> round(float(north), 7), round(float(up), 7)
-    (-0.0010313, 0.0010313)
+    >>> east, north, up = coriolis_acceleration(10.0, 0.0, 0.0, latitude=60.0)
+    >>> east.round(6), north.round(6), up.round(6)
+    (np.float64(0.0), np.float64(-0.001263), np.float64(0.000729))
     """
-    f, f_hat = coriolis_parameter(latitude), horizontal_coriolis_parameter(latitude)
-    return f * v - f_hat * w, -f * u, f_hat * u
+    u, v, w = (np.asarray(x, dtype=float) for x in (u, v, w))
+    f, f_horizontal = coriolis_parameter(latitude), horizontal_coriolis_parameter(latitude)
+    with np.errstate(invalid="ignore", over="ignore", under="ignore"):
+        return f * v - f_horizontal * w, -f * u, f_horizontal * u
 
 
-def neglected_terms(u: Floats, v: Floats, w: Floats, latitude: Floats) -> tuple[Floats, Floats]:
-    r"""
-    Size of what the horizontal form of the Coriolis acceleration leaves out.
+def neglected_terms(u: Any, v: Any, w: Any, latitude: Any) -> NeglectedTerms:
+    """
+    Size of the Coriolis terms that the horizontal form (f v, -f u) leaves out.
 
     Parameters
     ----------
     u, v, w : array
-        Wind toward east, north and up. [m s-1]
+        Wind toward east, toward north and upward. [m s-1]
     latitude : array
         North positive. [degree]
 
     Returns
     -------
-    eastward : array
-        :math:`|\hat f w|` over the size :math:`|f| \sqrt{u^2 + v^2}` of the horizontal
-        acceleration; infinite at the equator, NaN without a wind. [1]
-    upward : array
-        :math:`|\hat f u| / g`. [1]
+    NeglectedTerms
+        Each term as an acceleration and beside what it is left out against.
 
     Examples
     --------
-    With 10 m/s, 1 cm/s and 45 degrees, 1 in 1000 (checks, section 11: derived).
-
-    >>> round(float(neglected_terms(0.0, 10.0, 0.01, 45.0)[0]), 6)
-    0.001
+    >>> left_out = neglected_terms(10.0, 10.0, 0.01, latitude=45.0)
+    >>> left_out.eastward_fraction.round(6), left_out.upward_fraction.round(6)
+    (np.float64(0.001), np.float64(0.000105))
     """
-    f, f_hat = coriolis_parameter(latitude), horizontal_coriolis_parameter(latitude)
-    with np.errstate(divide="ignore", invalid="ignore"):
-        eastward = np.abs(f_hat * w) / (np.abs(f) * np.hypot(u, v))
-    return eastward, np.abs(f_hat * u) / gravity(latitude)
+    kept = np.asarray(coriolis_parameter(latitude) * np.asarray(v, dtype=float))
+    f_horizontal = horizontal_coriolis_parameter(latitude)
+    with np.errstate(invalid="ignore", over="ignore", under="ignore", divide="ignore"):
+        eastward = -f_horizontal * np.asarray(w, dtype=float)
+        upward = f_horizontal * np.asarray(u, dtype=float)
+        fraction = np.where(kept == 0, np.nan, np.abs(eastward) / np.abs(kept))
+        return NeglectedTerms(
+            eastward=eastward,
+            eastward_fraction=fraction[()],
+            upward=upward,
+            upward_fraction=np.abs(upward) / gravity(latitude),
+        )
 
 
-def inertial_period(latitude: Floats) -> Floats:
+def inertial_period(f: Any) -> Any:
     r"""
-    Inertial period, NaN on the equator where there is none. [s].
+    Period of a free inertial oscillation, :math:`2 \pi / |f|`.
 
-    .. math:: T = 2 \pi / |f|
+    Parameters
+    ----------
+    f : array
+        Coriolis parameter, of either sign. [s-1]
 
-    (American Meteorological Society, Glossary of Meteorology, "inertial oscillation".)
+    Returns
+    -------
+    period : array
+        Half a sidereal day at the poles, a whole one at 30 degrees. NaN on the equator, where
+        nothing oscillates. [s]
+
+    References
+    ----------
+    American Meteorological Society: Glossary of Meteorology, "Inertial oscillation".
 
     Examples
     --------
-    >>> round(float(inertial_period(30.0)) / 3600, 3)
-    23.934
+    >>> (inertial_period(coriolis_parameter(-30.0)) / 3600.0).round(3)
+    np.float64(23.934)
     """
-    f = np.abs(coriolis_parameter(latitude))
-    with np.errstate(divide="ignore"):
-        return np.where(f > 0, 2.0 * np.pi / np.where(f > 0, f, 1.0), np.nan)
+    with np.errstate(divide="ignore", invalid="ignore", over="ignore"):
+        period = 2.0 * np.pi / np.abs(np.asarray(f, dtype=float))
+    return np.where(np.isfinite(period), period, np.nan)[()]
 
 
-def gravity(latitude: Floats, altitude: Floats = 0.0) -> Floats:  # type: ignore[assignment]
+def gravity(latitude: Any, altitude: Any = 0.0) -> Any:
     r"""
-    Return the normal gravity of the WGS84 ellipsoid. [m s-2].
+    Gravity of the WGS84 ellipsoid, the centrifugal part included.
 
     Parameters
     ----------
     latitude : array
-        Geodetic latitude. [degree]
+        North positive. [degree]
     altitude : array
-        Height above the ellipsoid, here taken as that above mean sea level. [m]
+        Above the ellipsoid, which is within 110 m of sea level. [m]
+
+    Returns
+    -------
+    g : array
+        Downward. [m s-2]
 
     Notes
     -----
-    Somigliana's formula, and its expansion with height (NIMA TR8350.2, 1997: Department of Defense
-    World Geodetic System 1984, equations 4-1 and 4-3; the numbers of the equations from memory):
+    On the ellipsoid the closed formula of Somigliana, above it the expansion to second order in the
+    altitude h, TR8350.2 equations (4-1) and (4-3) [1]_:
 
     .. math::
+        g_0 &= g_e \frac{1 + k \sin^2\phi}{\sqrt{1 - e^2 \sin^2\phi}} \\
+        g &= g_0 \left[1 - \frac{2}{a} (1 + f + m - 2 f \sin^2\phi) h + \frac{3}{a^2} h^2\right]
 
-        \gamma_0 = \gamma_e \frac{1 + k \sin^2\varphi}{\sqrt{1 - e^2 \sin^2\varphi}}, \qquad
-        \gamma = \gamma_0 \left[1 - \frac{2}{a}(1 + f + m - 2 f \sin^2\varphi) h
-        + \frac{3 h^2}{a^2}\right]
+    References
+    ----------
+    .. [1] NIMA, 2000: Department of Defense World Geodetic System 1984. TR8350.2, third edition
+       (equation numbers from memory).
 
     Examples
     --------
-    >>> round(float(gravity(45.0)), 7)
-    9.8061978
+    >>> gravity(45.0).round(6), gravity(45.0, 10000.0).round(4)
+    (np.float64(9.806198), np.float64(9.7754))
     """
-    sine2 = np.sin(np.radians(latitude)) ** 2
-    at_ground = (
-        _GRAVITY_AT_EQUATOR
-        * (1.0 + _GRAVITY_SLOPE * sine2)
-        / np.sqrt(1.0 - _ECCENTRICITY_SQUARED * sine2)
+    sine2 = np.sin(_radians(latitude)) ** 2
+    ratio = np.asarray(altitude, dtype=float) / SEMI_MAJOR_AXIS
+    surface = (
+        EQUATORIAL_GRAVITY
+        * (1.0 + SOMIGLIANA * sine2)
+        / np.sqrt(1.0 - ECCENTRICITY_SQUARED * sine2)
     )
-    slope = 1.0 + _FLATTENING + _CENTRIFUGAL_RATIO - 2.0 * _FLATTENING * sine2
-    ratio = np.asarray(altitude) / _SEMI_MAJOR_AXIS
-    return at_ground * (1.0 - 2.0 * slope * ratio + 3.0 * ratio**2)
+    slope = 1.0 + FLATTENING + GRAVITY_RATIO - 2.0 * FLATTENING * sine2
+    with np.errstate(invalid="ignore", over="ignore", under="ignore"):
+        return surface * (1.0 - 2.0 * slope * ratio + 3.0 * ratio**2)
 
 
-def geopotential_height(altitude: Floats) -> Floats:
+def geopotential_height(altitude: Any, latitude: Any = None) -> Any:
     r"""
-    Geopotential height of a geometric altitude. [m].
+    Geopotential height of a geometric altitude.
 
-    .. math:: H = \frac{R z}{R + z}, \qquad R = 6356766\ \mathrm{m}
+    Parameters
+    ----------
+    altitude : array
+        Above mean sea level. [m]
+    latitude : array, optional
+        With it, the gravity of that latitude; without it, that of ISO 2533. [degree]
 
-    (U.S. Standard Atmosphere, 1976, NOAA/NASA/USAF: standard gravity at z = 0, where a site's own
-    differs by up to 0.27 per cent.)
+    Returns
+    -------
+    geopotential_height : array
+        NaN below half an Earth radius under the sea. [m]
+
+    Notes
+    -----
+    .. math:: H = \Gamma \frac{R Z}{R + Z}
+
+    with :math:`\Gamma = 1` and R = 6356766 m in ISO 2533:1975 [1]_; with a latitude
+    :math:`\Gamma = g_0(\phi) / 9.80665` and
+    :math:`R = a / (1 + f + m - 2 f \sin^2\phi)`, which gives gravity its true decrease with
+    height [2]_.
+
+    References
+    ----------
+    .. [1] ISO 2533:1975, Standard Atmosphere.
+    .. [2] WMO-No. 8, Guide to Instruments and Methods of Observation, upper-air pressure,
+       temperature and humidity, after M. J. Mahoney (from memory; R follows from the formula of
+       :func:`gravity`).
 
     Examples
     --------
-    >>> round(float(geopotential_height(10000.0)), 3)
-    9984.293
+    >>> geopotential_height(np.array([1000.0, 10000.0])).round(3)
+    array([ 999.843, 9984.293])
+    >>> geopotential_height(10000.0, latitude=70.0).round(1)
+    np.float64(10004.1)
     """
-    altitude = np.asarray(altitude, dtype=float)
-    return STANDARD_RADIUS * altitude / (STANDARD_RADIUS + altitude)
+    z = np.asarray(altitude, dtype=float)
+    radius, ratio = _radius(latitude)
+    with np.errstate(invalid="ignore", divide="ignore", over="ignore"):
+        height = ratio * radius * (z / (radius + z))
+        return np.where(z > -0.5 * radius, height, np.nan)[()]
 
 
-def geometric_altitude(geopotential_height: Floats) -> Floats:
-    """
-    Geometric altitude of a geopotential height, the inverse of :func:`geopotential_height`. [m].
+def geometric_altitude(geopotential_height: Any, latitude: Any = None) -> Any:
+    r"""
+    Geometric altitude of a geopotential height, the inverse of :func:`geopotential_height`.
+
+    Parameters
+    ----------
+    geopotential_height : array
+        [m]
+    latitude : array, optional
+        As there. [degree]
+
+    Returns
+    -------
+    altitude : array
+        :math:`Z = R H / (\Gamma R - H)`; NaN where no altitude has that geopotential. [m]
 
     Examples
     --------
-    >>> round(float(geometric_altitude(11000.0)), 2)
-    11019.07
+    >>> geometric_altitude(11000.0).round(2)
+    np.float64(11019.07)
     """
-    height = np.asarray(geopotential_height, dtype=float)
-    return STANDARD_RADIUS * height / (STANDARD_RADIUS - height)
+    h = np.asarray(geopotential_height, dtype=float)
+    radius, ratio = _radius(latitude)
+    with np.errstate(invalid="ignore", divide="ignore", over="ignore"):
+        altitude = radius * (h / (ratio * radius - h))
+        exists = (h < ratio * radius) & (altitude > -0.5 * radius)
+        return np.where(exists, altitude, np.nan)[()]
+
+
+def coriolis(stack: Stack, equator_limit: float = EQUATOR_LIMIT) -> Coriolis:
+    """
+    Coriolis parameter of each profile, and whether it is large enough to divide by.
+
+    Parameters
+    ----------
+    stack
+        Profiles with their latitude.
+    equator_limit
+        Analyses that divide by f decline at and within this distance from the equator. [degree]
+
+    Returns
+    -------
+    Coriolis
+        ``coriolis_parameter`` is given wherever the latitude is known, near the equator too.
+
+    Raises
+    ------
+    ValueError
+        If the limit is not between 0 and 90.
+
+    Examples
+    --------
+    >>> told = coriolis(Stack.of(latitude=[52.0, -3.0, np.nan], height=[[10.0]]))
+    >>> told.applies.tolist(), told.why.tolist()[1]
+    ([True, False, False], 'the site lies within 5 degrees of the equator')
+    """
+    if not 0.0 <= equator_limit <= 90.0:
+        raise ValueError(
+            f"the equator limit is {equator_limit:g} degrees. Give a distance of 0 to 90 degrees."
+        )
+    latitude = np.array(stack.latitude, dtype=float)
+    f = coriolis_parameter(latitude)
+    known = np.isfinite(f)
+    with np.errstate(invalid="ignore"):
+        applies = known & (np.abs(latitude) > equator_limit) & (f != 0)
+    near = f"the site lies within {equator_limit:g} degrees of the equator"
+    if equator_limit == 0.0:
+        near = "the site lies on the equator"
+    why = np.select(
+        [np.isnan(latitude), ~known, ~applies], [NO_LATITUDE, BAD_LATITUDE, near], default=""
+    )
+    return Coriolis(
+        coriolis_parameter=f,
+        horizontal_coriolis_parameter=horizontal_coriolis_parameter(latitude),
+        inertial_period=inertial_period(f),
+        applies=applies,
+        why=why.astype(object),
+        equator_limit=float(equator_limit),
+    )
+
+
+def _radians(latitude: Any) -> Any:
+    """Latitude in radians, NaN where it is none."""
+    degrees = np.asarray(latitude, dtype=float)
+    with np.errstate(invalid="ignore"):
+        return np.radians(np.where(np.abs(degrees) <= 90.0, degrees, np.nan))
+
+
+def _radius(latitude: Any) -> tuple[Any, Any]:
+    """Radius of the geopotential formula and gravity on the ground over standard gravity."""
+    if latitude is None:
+        return EARTH_RADIUS, 1.0
+    sine2 = np.sin(_radians(latitude)) ** 2
+    radius = SEMI_MAJOR_AXIS / (1.0 + FLATTENING + GRAVITY_RATIO - 2.0 * FLATTENING * sine2)
+    return radius, gravity(latitude) / STANDARD_GRAVITY
