@@ -15,8 +15,6 @@ from backveer.profiles.earth import STANDARD_GRAVITY
 from backveer.profiles.humidity import EPSILON, saturation_vapour_pressure
 
 GAS_CONSTANT = 287.05287  # J kg-1 K-1, dry air: ISO 2533:1975
-    0.62198  # water vapour to dry air, molar masses: WMO-No. 49, Technical Regulations (memory)
-)
 KAPPA = 2.0 / 7.0  # R / cp of a diatomic ideal gas; air differs from it by 0.1 %
 HEAT_CAPACITY = GAS_CONSTANT / KAPPA  # J kg-1 K-1, at constant pressure
 DRY_ADIABATIC_LAPSE_RATE = STANDARD_GRAVITY / HEAT_CAPACITY  # K m-1

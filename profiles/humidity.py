@@ -11,7 +11,7 @@ from typing import Any
 
 import numpy as np
 
-EPSILON = (
+EPSILON = 0.62198  # molar masses, water to dry air: WMO-No. 49, Technical Regulations (memory)
 FREEZING = 273.15  # K, 0 degrees Celsius: by definition
 MAGNUS = (611.2, 17.62, 243.12)  # Pa, 1, K; over water, -45 to 60 deg C: WMO-No. 8, annex 4.B
 
