@@ -7,12 +7,8 @@ from typing import Any
 import numpy as np
 
 from backveer.profiles import air
-from backveer.profiles.earth import STANDARD_GRAVITY
 from backveer.profiles.grid import compact
 from backveer.profiles.labels import Bools, Floats
-
-# g / cp, with the constants of air.py: 9.76 K in 1000 m [K m-1]
-DRY_ADIABATIC_LAPSE_RATE = STANDARD_GRAVITY * air.KAPPA / air.DRY_GAS_CONSTANT
 
 
 def superadiabatic(
@@ -45,7 +41,7 @@ def superadiabatic(
     place: Any = np.broadcast_to(np.arange(z.shape[1]), z.shape)
     _count, zk, tk, place = compact(usable, z, temperature, place)
     with np.errstate(invalid="ignore"):
-        beyond = np.diff(tk, axis=1) + DRY_ADIABATIC_LAPSE_RATE * np.diff(zk, axis=1)
+        beyond = np.diff(tk, axis=1) + air.DRY_ADIABATIC_LAPSE_RATE * np.diff(zk, axis=1)
         row, column = np.nonzero((beyond < -excess) & (zk[:, :-1] >= surface_layer))
     found = np.zeros(z.shape, dtype=bool)
     found[row, place[row, column + 1]] = True
@@ -88,7 +84,6 @@ def not_hydrostatic(
     """
     found = np.zeros(z.shape, dtype=bool)
     place: Any = np.broadcast_to(np.arange(z.shape[1]), z.shape)
-    metres_per_kelvin = air.DRY_GAS_CONSTANT / STANDARD_GRAVITY
     for lags in ((1, 2), (1,)):
         _count, zk, pk, tk, where = compact(
             usable & ~found, z, pressure, virtual_temperature, place
@@ -102,9 +97,9 @@ def not_hydrostatic(
             mean = 0.5 * (tk[:, below] + tk[:, above])
             with np.errstate(invalid="ignore", divide="ignore", over="ignore"):
                 depth = zk[:, above] - zk[:, below]
-                thickness = air.thickness(mean, p0, p1)
+                thickness = air.thickness(p0, p1, mean)
                 # dz = (R T / g) dp / p for an error of either pressure.
-                rounding = metres_per_kelvin * mean * resolution * (1.0 / p0 + 1.0 / p1)
+                rounding = air.scale_height(mean) * resolution * (1.0 / p0 + 1.0 / p1)
                 agrees = np.abs(thickness - depth) <= excess + fraction * depth + rounding
             for ends in (below, above):
                 asked[:, ends] += np.isfinite(depth)

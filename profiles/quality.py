@@ -323,7 +323,8 @@ def _check_air(
     pressure, virtual = stack.air_pressure, temperature
     if "dew_point_temperature" in good:
         moist = np.where(good["dew_point_temperature"], stack.dew_point_temperature, np.nan)
-        virtual = air.virtual_temperature_of(temperature, moist, pressure)
+        virtual = air.virtual_temperature(temperature, moist, pressure)
+        virtual = np.where(np.isfinite(virtual), virtual, temperature)
     disagreeing = not_hydrostatic(
         z,
         pressure,
