@@ -137,15 +137,24 @@ def turning(
         low = np.maximum(bounds[:-1], base[:, np.newaxis])
         high = np.minimum(bounds[1:], top[:, np.newaxis])
         reached = low < high
-    low, high = np.where(reached, low, np.nan), np.where(reached, high, np.nan)
-    layer = _between(stack, chain, sigma, low, high)
-    whole = _between(stack, chain, sigma, base[:, np.newaxis], top[:, np.newaxis])
-    with np.errstate(invalid="ignore"):
-        rate = layer.turn * 100.0 / (high - low)
         several = base < top
-    why = np.where(several, whole.why[:, 0], TOO_FEW).astype(object)
-    total = np.where(several, whole.turn[:, 0], np.nan)
-    total_error = np.where(several, whole.error[:, 0], np.nan)
+    low, high = np.where(reached, low, np.nan), np.where(reached, high, np.nan)
+    some = np.flatnonzero(reached.any(axis=0))  # a lidar reaches few of the layers
+    told = _between(
+        stack,
+        chain,
+        sigma,
+        np.concatenate([base[:, np.newaxis], low[:, some]], axis=1),
+        np.concatenate([top[:, np.newaxis], high[:, some]], axis=1),
+    )
+    total = np.where(several, told.turn[:, 0], np.nan)
+    total_error = np.where(several, told.error[:, 0], np.nan)
+    why = np.where(several, told.why[:, 0], TOO_FEW).astype(object)
+    layer_turning, layer_error, speed_change = (np.full(low.shape, np.nan) for _ in range(3))
+    layer_turning[:, some], layer_error[:, some] = told.turn[:, 1:], told.error[:, 1:]
+    speed_change[:, some] = told.speed_change[:, 1:]
+    layer_why = np.full(low.shape, NOT_REACHED, dtype=object)
+    layer_why[:, some] = np.where(reached[:, some], told.why[:, 1:], NOT_REACHED)
     return Turning(
         direction=angle,
         total=total,
@@ -156,12 +165,12 @@ def turning(
         top=top,
         layer_base=low,
         layer_top=high,
-        layer_turning=layer.turn,
-        layer_error=layer.error,
-        layer_rate=rate,
-        layer_sense=_sense(layer.turn, layer.error),
-        layer_why=np.where(reached, layer.why, NOT_REACHED).astype(object),
-        layer_speed_change=layer.speed_change,
+        layer_turning=layer_turning,
+        layer_error=layer_error,
+        layer_rate=layer_turning * 100.0 / (high - low),
+        layer_sense=_sense(layer_turning, layer_error),
+        layer_why=layer_why,
+        layer_speed_change=speed_change,
     )
 
 
@@ -210,11 +219,13 @@ def _between(stack: Stack, chain: Chain, sigma: Floats, low: Floats, high: Float
     doubt = take(chain.doubt, i1) - take(chain.doubt, i0)
     extra = take(chain.variance, i1) - take(chain.variance, i0)
     error = np.sqrt(np.degrees(np.degrees(np.maximum(variance, 0.0))) + extra)
-    why = np.where(np.isnan(turn), CALM_EDGE, np.where(doubt > LIKELY, EITHER_WAY, ""))
+    calm, doubtful = np.isnan(turn), doubt > LIKELY
+    why = np.full(turn.shape, "", dtype=object)
+    why[doubtful], why[calm] = EITHER_WAY, CALM_EDGE
     return _Turn(
-        turn=np.where(why == "", turn, np.nan),
-        error=np.where(why == "", error, np.nan),
-        why=why.astype(object),
+        turn=np.where(doubtful, np.nan, turn),
+        error=np.where(doubtful | calm, np.nan, error),
+        why=why,
         speed_change=speed1 - speed0,
     )
 
@@ -242,7 +253,8 @@ def _edge(
 
 def _sense(turn: Floats, error: Floats) -> Words:
     """Return veering, backing, or steady where the turning is within its error."""
+    word = np.full(turn.shape, "", dtype=object)
     with np.errstate(invalid="ignore"):
-        steady = (np.abs(turn) < error) | (turn == 0)
-        word = np.where(steady, "steady", np.where(turn > 0, "veering", "backing"))
-    return np.where(np.isfinite(turn), word, "").astype(object)
+        word[turn > 0], word[turn < 0] = "veering", "backing"
+        word[(np.abs(turn) < error) | (turn == 0)] = "steady"
+    return word
