@@ -325,11 +325,13 @@ def _check_air(
         moist = np.where(good["dew_point_temperature"], stack.dew_point_temperature, np.nan)
         virtual = air.virtual_temperature(temperature, moist, pressure)
         virtual = np.where(np.isfinite(virtual), virtual, temperature)
+    # Heights out of the standard atmosphere are known to disagree with the day's temperatures.
+    measured = (stack.level_flag & BIT["height_from_standard_atmosphere"]) == 0
     disagreeing = not_hydrostatic(
         z,
         pressure,
         virtual,
-        usable & good["air_pressure"],
+        usable & good["air_pressure"] & measured,
         limits.thickness_excess,
         limits.thickness_fraction,
         limits.pressure_resolution,

@@ -243,6 +243,14 @@ def test_heights_in_feet_taken_for_metres_are_found():
     assert (flags & BIT["not_hydrostatic"]).astype(bool).sum() >= 9
 
 
+def test_heights_of_the_standard_atmosphere_are_not_held_against_the_pressure():
+    stack = sounding(height=setting(slice(None), 1.1 * sounding().height[0]))
+    assert (check(stack).level_flag & BIT["not_hydrostatic"]).any()
+    derived = np.full(stack.height.shape, BIT["height_from_standard_atmosphere"], dtype=np.uint32)
+    checked = check(stack.replace(level_flag=derived))
+    assert not (checked.level_flag & BIT["not_hydrostatic"]).any()
+
+
 def test_a_break_marks_both_sides():
     stack = sounding()
     z = stack.height.copy()
