@@ -65,10 +65,10 @@ def hypsometric_altitude(
         depth = -np.log(np.where((p > 0) & np.isfinite(p), p, np.nan))  # grows upward, as height
     order = np.argsort(depth, axis=-1, kind="stable")  # NaN last
     depth, p, t = (np.take_along_axis(x, order, axis=-1) for x in (depth, p, t))
-    tv = _fill(depth, t, REACH)
+    tv = fill(depth, t, REACH)
     if dew:
         moist = virtual_temperature(
-            tv, _fill(depth, np.take_along_axis(dew[0], order, axis=-1), 0.0), p
+            tv, fill(depth, np.take_along_axis(dew[0], order, axis=-1), 0.0), p
         )
         tv = np.where(np.isfinite(moist), moist, tv)
     base = np.asarray(base_altitude, dtype=float)[..., np.newaxis]
@@ -124,14 +124,14 @@ def hypsometric_pressure(
     h = np.where(np.isfinite(h), h, np.nan)
     order = np.argsort(h, axis=-1, kind="stable")
     h, t = (np.take_along_axis(x, order, axis=-1) for x in (h, t))
-    dry = _fill(h, t, REACH * 8000.0)
+    dry = fill(h, t, REACH * 8000.0)
     base = np.asarray(base_pressure, dtype=float)[..., np.newaxis]
     tv = dry
     for turn in range(4 if dew else 1):
         with np.errstate(over="ignore", under="ignore", invalid="ignore"):
             p = base * np.exp(-_upward(2.0 / scale_height(1.0), h, tv, True))
         if dew and turn == 0:
-            wet = _fill(h, np.take_along_axis(dew[0], order, axis=-1), 0.0)
+            wet = fill(h, np.take_along_axis(dew[0], order, axis=-1), 0.0)
         if dew:
             moist = virtual_temperature(dry, wet, p)
             tv = np.where(np.isfinite(moist), moist, dry)
@@ -140,7 +140,7 @@ def hypsometric_pressure(
     return result
 
 
-def _fill(x: Any, y: Any, reach: float) -> Any:
+def fill(x: Any, y: Any, reach: float) -> Any:
     """
     Interpolate what is missing in ``y`` along a coordinate that does not fall, NaN last.
 
