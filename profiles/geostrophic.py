@@ -31,7 +31,7 @@ DEFAULT_DEPTH = (
     1500.0  # of a boundary layer of which nothing is known; choice, on the safe side [m]
 )
 CLEARANCE = 1.25  # base of the free air over depth: the last of the spiral dies out; choice
-LEAST_BASE = 300.0  # of the free air: above a very stable night the air still swings; choice [m]
+HIGHEST_LID = 3000.0  # an inversion above this does not end the boundary layer; choice [m]
 DEPTH_DOUBT = 0.2  # relative error of a depth by bulk Richardson number; choice, of the trade
 NOISE_LENGTH = 100.0  # of wind errors along height where the fit tells none; choice [m]
 FIRM = 2.0  # a vector is told when it is at least so many times its error
@@ -160,9 +160,11 @@ def geostrophic(
     departure is told above the levels that this rests on.
 
     The layer with friction reaches to pi times the scale height of a well determined fit, otherwise
-    to the depth by bulk Richardson number. The free air begins a quarter above it, and not below
-    ``LEAST_BASE``; where no depth is known it begins at ``DEFAULT_DEPTH``, and the friction
-    velocity is withheld.
+    to the depth by bulk Richardson number. The free air begins a quarter above it, and above
+    the lowest elevated inversion: beneath that lies the layer of the day, in which the wind may
+    still swing at night. It does not begin below ``DEFAULT_DEPTH`` where the ground is under an
+    inversion and no lid shows how far the day had mixed, or where no depth is known; then the
+    friction velocity is withheld.
     Above the layer, or above a profile that ends within it, the integral goes on along a well
     determined fit, whose share is trusted by half. Errors of the fit and of the wind are taken as
     independent, which makes the error of the friction velocity rather too large.
@@ -177,8 +179,7 @@ def geostrophic(
     well = applies & (fit.verdict == "well determined")
     weak = applies & (fit.verdict == "weakly determined")
     depth, depth_error, depth_from = _depth(fit, boundary, well)
-    above = np.maximum(CLEARANCE * depth, LEAST_BASE)
-    base = np.where(depth_from == "default", DEFAULT_DEPTH, above)
+    base = _base(boundary, depth, depth_from)
     line = free_air(z, u, v, base, base + FREE_AIR_DEPTH, error)
     evidence = _evidence(coriolis, fit, line, well | weak, given, given_error)
     chosen, pick = _choose(evidence, fit, line, well, weak, base)
@@ -223,6 +224,20 @@ def _depth(fit: EkmanFit, boundary: BoundaryLayer, well: Bools) -> tuple[Floats,
     )
     words = np.where(well, "fit", np.where(known, "bulk Richardson number", "default"))
     return depth, error, words.astype(object)
+
+
+def _base(boundary: BoundaryLayer, depth: Floats, depth_from: Words) -> Floats:
+    """Where the free air begins."""
+    lids = np.where(
+        (boundary.inversion_kind == "elevated") & (boundary.inversion_top <= HIGHEST_LID),
+        boundary.inversion_top,
+        np.inf,
+    )
+    lid = lids.min(axis=-1, initial=np.inf)
+    night = (boundary.inversion_kind == "surface-based").any(axis=-1)
+    least = np.where(np.isfinite(lid), lid, np.where(night, DEFAULT_DEPTH, 0.0))
+    base = np.maximum(CLEARANCE * depth, least)
+    return np.where(depth_from == "default", np.maximum(DEFAULT_DEPTH, least), base)
 
 
 def _evidence(

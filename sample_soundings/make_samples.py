@@ -24,6 +24,7 @@ KNOT = 1852.0 / 3600.0  # m/s, by definition
 FOOT = 0.3048  # m, by definition
 VON_KARMAN = 0.40
 DRY_AIR = 287.05  # J kg-1 K-1
+STEADY = {"spin_up": 600.0, "step": 10800.0}  # hours and seconds
 NORTH = {"latitude": 58.41, "longitude": -3.05, "elevation": 52.0}  # Harrow Skerry
 SOUTH = {"latitude": -47.90, "longitude": -61.20, "elevation": 23.0}  # Punta Escarcha
 TROPICS = {"latitude": 3.20, "longitude": -31.40, "elevation": 8.0}  # Morvanne
@@ -44,16 +45,18 @@ def columns_of_air(
     mixing_depth: Callable[[float], float],
     roughness: float,
     spin_up: float = 72.0,
+    step: float = 600.0,
 ) -> tuple[Any, Any]:
     """
     Wind of a column of air at the given hours: dW/dt = -i f (W - Wg) + d/dz (K dW/dz).
 
-    K = kappa u* z exp(-z / mixing depth) and a little background; implicit steps of ten minutes.
-    Returns the heights of the model [m] and the wind, complex, shape (hour, height).
+    K = kappa u* z exp(-z / mixing depth) and a little background. Implicit steps [s]; long ones let
+    what the start left swinging die out, and give the steady wind. Returns the heights of the
+    model [m] and the wind, complex, shape (hour, height).
     """
     f = 2.0 * 7.292115e-5 * np.sin(np.radians(latitude))
     edges = np.exp(np.linspace(np.log(2.0 * roughness), np.log(4000.0), 91))
-    z, depth, step = np.sqrt(edges[1:] * edges[:-1]), np.diff(edges), 600.0
+    z, depth = np.sqrt(edges[1:] * edges[:-1]), np.diff(edges)
     wind = geostrophic(hours[0], z) * np.minimum(1.0, 0.3 + z / 800.0)
     kept, time = [], hours[0] - spin_up
     while len(kept) < len(hours):
@@ -190,14 +193,16 @@ def table(rows: Sequence[Sequence[str]], delimiter: str, end: str = "\n") -> str
 
 
 def ekman_turn() -> bytes:
-    """Clean Ekman turn: steady westerly, neutral air, geostrophic wind the same up to 2.5 km."""
+    """Clean Ekman turn: steady westerly, neutral air, geostrophic wind the same up to 3.5 km."""
     random = Random(101)
     z = ascent(random, 10.0, 24.0, 500)
 
     def geostrophic(_hour: float, height: Any) -> Any:
-        return toward(262.0, 13.0) + (0.0019 + 0.0004j) * np.maximum(height - 2500.0, 0.0)
+        return toward(262.0, 13.0) + (0.0019 + 0.0004j) * np.maximum(height - 3500.0, 0.0)
 
-    model, wind = columns_of_air([0.0], NORTH["latitude"], geostrophic, lambda _hour: 190.0, 0.03)
+    model, wind = columns_of_air(
+        [0.0], NORTH["latitude"], geostrophic, lambda _hour: 190.0, 0.03, **STEADY
+    )
     w = at(z, model, wind[0], geostrophic(0.0, z)) + wind_noise(random, z, 0.22, 60.0)
     temperature, humidity = air(z, random, 284.6, 1250.0, 1.6)
     p = pressure(z, temperature, humidity, 100320.0, NORTH["latitude"])
@@ -238,7 +243,9 @@ def _warm_advection(seed: int, place: dict[str, float], count: int) -> tuple[Any
         thermal = toward(270.0 - sense * 50.0 + sense * 85.0, 0.0030)
         return ground + thermal * np.minimum(height, 5000.0)
 
-    model, wind = columns_of_air([0.0], place["latitude"], geostrophic, lambda _hour: 150.0, 0.01)
+    model, wind = columns_of_air(
+        [0.0], place["latitude"], geostrophic, lambda _hour: 150.0, 0.01, **STEADY
+    )
     w = at(z, model, wind[0], geostrophic(0.0, z)) + wind_noise(random, z, 0.2, 60.0)
     temperature, humidity = air(z, random, 281.9, 900.0, 2.2, moisture=0.82)
     p = pressure(z, temperature, humidity, 99410.0, place["latitude"])
@@ -311,7 +318,7 @@ def warm_advection_north() -> bytes:
 def night_jet() -> bytes:
     """Jet on a surface inversion, hours after sunset. Components, feet and knots, a units row."""
     random = Random(304)
-    z = ascent(random, 10.0, 15.0, 110)
+    z = ascent(random, 10.0, 16.0, 210)
 
     def geostrophic(_hour: float, height: Any) -> Any:
         return toward(214.0, 10.5) + 0.0 * height
@@ -319,7 +326,7 @@ def night_jet() -> bytes:
     def mixing_depth(hour: float) -> float:
         return 260.0 if hour < 0.0 else 14.0  # the sun sets at hour 0
 
-    model, wind = columns_of_air([6.5], NORTH["latitude"], geostrophic, mixing_depth, 0.05)
+    model, wind = columns_of_air([6.5], NORTH["latitude"], geostrophic, mixing_depth, 0.05, 240.0)
     w = at(z, model, wind[0], geostrophic(0.0, z)) + wind_noise(random, z, 0.15, 40.0)
     temperature, humidity = air(z, random, 287.0, 1100.0, 1.5, ground_cooling=6.0, moisture=0.7)
     p = pressure(z, temperature, humidity, 101450.0, NORTH["latitude"])
@@ -497,7 +504,9 @@ def pilot_balloon() -> bytes:
     def geostrophic(_hour: float, height: Any) -> Any:
         return toward(301.0, 9.0) + 0.0 * height
 
-    model, wind = columns_of_air([0.0], NORTH["latitude"], geostrophic, lambda _hour: 160.0, 0.03)
+    model, wind = columns_of_air(
+        [0.0], NORTH["latitude"], geostrophic, lambda _hour: 160.0, 0.03, **STEADY
+    )
     w = at(z, model, wind[0], geostrophic(0.0, z)) + wind_noise(random, z, 0.5, 100.0)
     head = [
         "Pilot balloon, Harrow Skerry, single theodolite",

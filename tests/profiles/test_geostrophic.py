@@ -187,6 +187,27 @@ def test_free_air_shear_serves_the_departure():
     assert np.isnan(answer.departure_along[0, Z > 3000.0]).all()
 
 
+@pytest.mark.parametrize(
+    ("inversions", "base"),
+    [
+        ({}, 1.25 * 200.0),
+        ({"inversion_kind": "surface-based", "inversion_top": 150.0}, 1500.0),
+        ({"inversion_kind": "elevated", "inversion_top": 1100.0}, 1100.0),
+        ({"inversion_kind": "elevated", "inversion_top": 3600.0}, 1.25 * 200.0),
+    ],
+)
+def test_free_air_begins_above_the_layer_of_the_day(inversions, base):
+    """Below the base the wind is wild: only the right base keeps all of that out, and no more."""
+    wind = np.where(base > Z, 30.0 * np.sin(Z / 70.0) - 20.0, 9.0 + 0.001 * Z)
+    stack = Stack.of(height=Z, eastward_wind=wind, northward_wind=4.0, latitude=LATITUDE)
+    boundary = blank(BoundaryLayer, 1, bulk_richardson_depth=200.0, **inversions)
+    answer = ask(stack, boundary=boundary)
+    assert evidence(answer, 2) == pytest.approx(9.0 + 4.0j)
+    lowest = Z[base <= Z][0]
+    assert np.isfinite(answer.departure_along[0, (lowest <= Z) & (base + 1500.0 >= Z)]).all()
+    assert np.isnan(answer.departure_along[0, base + 1500.0 < Z]).all()
+
+
 @pytest.mark.parametrize("top", [3500.0, 700.0])
 def test_friction_velocity_of_the_spiral(top):
     """
