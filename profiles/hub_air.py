@@ -6,14 +6,10 @@ from typing import Any
 
 import numpy as np
 
-from backveer.profiles.air import (
-    iec_air_density,
-    saturation_vapour_pressure,
-    standard_pressure,
-    standard_temperature,
-)
+from backveer.profiles.air import iec_air_density, standard_atmosphere
 from backveer.profiles.earth import STANDARD_GRAVITY, geopotential_height
 from backveer.profiles.grid import at_height
+from backveer.profiles.humidity import saturation_vapour_pressure
 from backveer.profiles.labels import Bools, Floats, Words
 from backveer.profiles.stack import Stack
 
@@ -66,7 +62,7 @@ def air_density(stack: Stack, hub_height: float) -> tuple[Floats, Words]:
     (array([1.225]), array(["standard atmosphere at the site's elevation"], dtype=object))
     """
     altitude = geopotential_height(_elevation(stack) + hub_height)
-    usual_t, usual_p = standard_temperature(altitude), standard_pressure(altitude)
+    usual_t, usual_p = standard_atmosphere(altitude)
     missing = np.full(stack.profile_count, np.nan)
     t = p = dew = missing
     with np.errstate(all="ignore"):

@@ -2,12 +2,9 @@ import numpy as np
 import pytest
 
 from backveer.profiles import hub_air
-from backveer.profiles.air import (
-    dew_point_from_relative_humidity,
-    standard_pressure,
-    standard_temperature,
-)
+from backveer.profiles.air import standard_atmosphere
 from backveer.profiles.hub_air import air_density
+from backveer.profiles.humidity import dew_point_from_relative_humidity
 from backveer.profiles.stack import Stack
 
 
@@ -78,14 +75,16 @@ def test_between_levels():
 @pytest.mark.parametrize("level", [0.0, 260.0])
 def test_nearest_level_is_brought_to_the_hub(level):
     """In the standard atmosphere the way to the hub must end in the standard atmosphere."""
+    temperature, pressure = standard_atmosphere(level)
     stack = Stack.of(
         height=[level],
-        air_temperature=standard_temperature(level),
-        air_pressure=standard_pressure(level),
+        air_temperature=temperature,
+        air_pressure=pressure,
         dew_point_temperature=150.0,  # dry
     )
     density, origin = air_density(stack, 130.0)
-    dry = standard_pressure(130.0) / (287.05 * standard_temperature(130.0))
+    temperature, pressure = standard_atmosphere(130.0)
+    dry = pressure / (287.05 * temperature)
     assert density[0] == pytest.approx(dry, rel=1e-6)
     assert origin[0] == hub_air.MEASURED
     far, origin = air_density(stack, 130.0 + 400.0)
@@ -97,7 +96,7 @@ def test_temperature_alone():
     stack = Stack.of(height=[90.0, 110.0], air_temperature=300.0, elevation=0.0)
     density, origin = air_density(stack, 100.0)
     expected, _ = air_density(
-        stack.replace(air_pressure=np.full((1, 2), standard_pressure(100.0))), 100.0
+        stack.replace(air_pressure=np.full((1, 2), standard_atmosphere(100.0)[1])), 100.0
     )
     assert density[0] == pytest.approx(expected[0], rel=1e-5)
     assert origin[0] == hub_air.NO_PRESSURE

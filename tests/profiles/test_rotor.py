@@ -6,8 +6,8 @@ from hypothesis import given
 from hypothesis import strategies as st
 
 from backveer.profiles import rotor as rotor_module
-from backveer.profiles.air import dew_point_from_relative_humidity
 from backveer.profiles.flags import BIT
+from backveer.profiles.humidity import dew_point_from_relative_humidity
 from backveer.profiles.labels import labels
 from backveer.profiles.rotor import Rotor, Turbine, rotor
 from backveer.profiles.stack import Stack, wind_components
