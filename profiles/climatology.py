@@ -354,12 +354,11 @@ def _percentile_intervals(
     number = resampling.by_day(group, groups)
     at = _percentiles(ordered, start, count, wanted)
     for place in range(wanted.size):
-        # Half a tie counts: a value that many profiles share would shift its own share.
-        here = at[:, place][group]
         with np.errstate(invalid="ignore"):
-            up_to = 0.5 * ((values < here).astype(float) + (values <= here))
+            up_to = (values <= at[:, place][group]).astype(float)
         low, high = resampling.interval(resampling.by_day(group, groups, up_to), number)
         middle = _sum(group, groups, np.where(group >= 0, up_to, 0.0))
+        # Where many profiles share the value, more than the wanted share lies up to it.
         with np.errstate(invalid="ignore", divide="ignore"):
             shift = wanted[place] - 100.0 * middle / count
         ends.append((100.0 * low + shift, 100.0 * high + shift))

@@ -153,7 +153,8 @@ def test_nose_inside_the_rotor():
     assert told.shear_above_nose[0, 0] == pytest.approx(-2.0 / 50.0)
     weak = np.array([6.0, 7.0, 8.0, 9.5, 9.4, 9.3, 9.2])
     assert np.isnan(rotor(stack_of(z, weak, 10.0), SMALL).nose_height[0, 0])
-    assert np.isnan(rotor(stack_of(z, speed[::-1] * 0 + z, 10.0), SMALL).nose_height[0, 0])
+    for one_way in (z, z[::-1]):  # rising, then falling all the way
+        assert np.isnan(rotor(stack_of(z, one_way / 10.0, 10.0), SMALL).nose_height[0, 0])
 
 
 def test_turbulence_and_veer_error():
@@ -240,8 +241,27 @@ def test_gap_inside_the_rotor():
     assert "the levels around hub height are too far apart" in told.why[0, 0]
     assert "neighbouring levels inside the rotor are too far apart" in told.why[0, 0]
     assert np.isnan(told.hub_speed[0, 0])
+    assert np.isnan(told.hub_direction[0, 0])
     joined = rotor(stack_of(GATES, speed, 10.0), TURBINE, gap_limit=0.7)
     assert joined.hub_speed[0, 0] == pytest.approx(8.0)
+
+
+def test_gap_near_the_tip_is_left_out():
+    z = np.delete(GATES, 7)  # from 160 to 200 m nothing
+    direction = np.where(z > 190.0, 60.0, 0.1 * z)
+    told = rotor(stack_of(z, 8.0, direction), TURBINE, gap_limit=0.2, coverage_limit=0.6)
+    assert told.covered_top[0, 0] == 160.0
+    assert told.veer[0, 0] == pytest.approx(0.1 * (160.0 - 44.0))
+    assert told.steepest_veer_rate[0, 0] == pytest.approx(0.1)
+    assert told.why[0, 0] == (
+        "neighbouring levels inside the rotor are too far apart to be joined; "
+        "veer, shear and equivalent speed are those of the covered part of the rotor"
+    )
+    low = np.delete(GATES, 3)  # from 80 to 120 m nothing, where the wind turns by 30 degrees
+    direction = np.where(low > 100.0, 30.0, 0.0) + 0.1 * low
+    inner = rotor(stack_of(low, 8.0, direction), Turbine("t", 140.0, 150.0), 0.6, gap_limit=0.2)
+    assert inner.veer[0, 0] == pytest.approx(30.0 + 0.1 * 150.0)
+    assert inner.steepest_veer_rate[0, 0] == pytest.approx(0.1)
 
 
 def test_calm_at_one_level_has_no_direction():
@@ -281,6 +301,9 @@ def test_turn_that_cannot_be_followed():
     assert "more than 120 degrees between neighbouring levels" in told.why[0, 0]
     assert np.isnan([told.veer[0, 0], told.steepest_veer_rate[0, 0]]).all()
     assert told.equivalent_speed[0, 0] == pytest.approx(8.0)
+    assert told.hub_direction[0, 0] == pytest.approx(10.0)
+    across = rotor(stack_of(GATES, 8.0, direction), Turbine("t", 130.0, 100.0))
+    assert np.isnan(across.hub_direction[0, 0])
 
 
 def test_wind_from_behind():
