@@ -53,7 +53,8 @@ class Classes:
     index : array of int, shape (profile,)
         The class of each profile, -1 for none.
     expected : array of int, shape (class,), or None
-        Profiles that a complete record would have in each class, where the clock tells.
+        Profiles that a complete record of one station would have in each class, where the clock
+        tells.
     """
 
     kind: str

@@ -159,17 +159,30 @@ def climate(
     safe = np.where(group >= 0, values, 0.0)
     count = _sum(group, groups)
     order, start = _sorted(values, group, groups)
-    at = _percentiles(values[order], start, count, np.append(wanted, 50.0))
-    mean, low, high = _weighted(safe, None, group, groups, resampling)
+    ordered = values[order]
+    at = _percentiles(ordered, start, count, np.append(wanted, 50.0))
+    with np.errstate(invalid="ignore"):
+        up_to = [(safe <= at[group, place]).astype(float) for place in range(wanted.size)]
+    beyond = [(safe < x if x < 0 else safe > x).astype(float) for x in limits]
+    # All in one: resampling costs by the call.
+    found, low, high = _weighted([safe, *up_to, *beyond], None, group, groups, resampling)
+    mean, share, shares = found[0], found[1 : 1 + wanted.size], found[1 + wanted.size :]
     with np.errstate(invalid="ignore", divide="ignore", over="ignore"):
         spread = np.where(group >= 0, safe - mean[group], 0.0)
         deviation = np.sqrt(_sum(group, groups, spread**2) / np.where(count > 1, count - 1, np.nan))
-    per_cent = _percentile_intervals(values, order, start, count, wanted, group, resampling)
-    beyond = [_weighted(_beyond(safe, x), None, group, groups, resampling) for x in limits]
-    shares = np.array(beyond).reshape(len(limits), 3, groups)
+    ends = [
+        _percentiles(
+            ordered,
+            start,
+            count,
+            # Where many profiles share the value, more than the wanted share lies up to it.
+            wanted + 100.0 * (end[1 : 1 + wanted.size] - share).T,
+        )
+        for end in (low, high)
+    ]
     by_wind, by_energy = _weights(speed, density, values.shape)
-    wind = _weighted(safe, by_wind, group, groups, resampling)
-    energy = _weighted(safe, by_energy, group, groups, resampling)
+    wind = [x[0] for x in _weighted([safe], by_wind, group, groups, resampling)]
+    energy = [x[0] for x in _weighted([safe], by_energy, group, groups, resampling)]
     expected = _expected(classes)
     with np.errstate(invalid="ignore", divide="ignore"):
         recovery = np.where(expected > 0, count / expected, np.nan)
@@ -179,25 +192,25 @@ def climate(
         expected=expected,
         recovery=recovery,
         mean=mean,
-        mean_low=low,
-        mean_high=high,
+        mean_low=low[0],
+        mean_high=high[0],
         deviation=deviation,
         median=at[:, -1],
         percentile_at=wanted,
         percentile=at[:, :-1],
-        percentile_low=per_cent[0],
-        percentile_high=per_cent[1],
+        percentile_low=ends[0],
+        percentile_high=ends[1],
         threshold_at=limits,
-        beyond=shares[:, 0].T,
-        beyond_low=shares[:, 1].T,
-        beyond_high=shares[:, 2].T,
+        beyond=shares.T,
+        beyond_low=low[1 + wanted.size :].T,
+        beyond_high=high[1 + wanted.size :].T,
         wind_weighted_mean=wind[0],
         wind_weighted_mean_low=wind[1],
         wind_weighted_mean_high=wind[2],
         energy_weighted_mean=energy[0],
         energy_weighted_mean_low=energy[1],
         energy_weighted_mean_high=energy[2],
-        why=_why(count, low, resampling),
+        why=_why(count, low[0], resampling),
         kind=classes.kind,
         confidence=np.nan if resampling is None else resampling.confidence,
         block_days=0 if resampling is None else resampling.block_days,
@@ -337,40 +350,6 @@ def _percentiles(ordered: Floats, start: Any, count: Floats, wanted: Floats) -> 
         return np.where(there, below + (rank - low) * (above - below), np.nan)
 
 
-def _percentile_intervals(
-    values: Floats,
-    order: Any,
-    start: Any,
-    count: Floats,
-    wanted: Floats,
-    group: Any,
-    resampling: Resampling | None,
-) -> tuple[Floats, Floats]:
-    groups = len(count)
-    if resampling is None or not wanted.size:
-        return np.full((groups, wanted.size), np.nan), np.full((groups, wanted.size), np.nan)
-    ordered = values[order]
-    ends = []
-    number = resampling.by_day(group, groups)
-    at = _percentiles(ordered, start, count, wanted)
-    for place in range(wanted.size):
-        with np.errstate(invalid="ignore"):
-            up_to = (values <= at[:, place][group]).astype(float)
-        low, high = resampling.interval(resampling.by_day(group, groups, up_to), number)
-        middle = _sum(group, groups, np.where(group >= 0, up_to, 0.0))
-        # Where many profiles share the value, more than the wanted share lies up to it.
-        with np.errstate(invalid="ignore", divide="ignore"):
-            shift = wanted[place] - 100.0 * middle / count
-        ends.append((100.0 * low + shift, 100.0 * high + shift))
-    low = np.stack([low for low, _high in ends], axis=1)
-    high = np.stack([high for _low, high in ends], axis=1)
-    return _percentiles(ordered, start, count, low), _percentiles(ordered, start, count, high)
-
-
-def _beyond(values: Floats, threshold: float) -> Floats:
-    return (values < threshold if threshold < 0 else values > threshold).astype(float)
-
-
 def _weights(speed: Any, density: Any, shape: tuple[int, ...]) -> tuple[Any, Any]:
     """Weights by wind and by energy, NaN where they are not known."""
     if speed is None:
@@ -381,26 +360,35 @@ def _weights(speed: Any, density: Any, shape: tuple[int, ...]) -> tuple[Any, Any
 
 
 def _weighted(
-    values: Floats, weight: Any, group: Any, groups: int, resampling: Resampling | None
+    quantities: Sequence[Floats],
+    weight: Any,
+    group: Any,
+    groups: int,
+    resampling: Resampling | None,
 ) -> tuple[Floats, Floats, Floats]:
-    """Mean of each group and the ends of its interval; a NaN weight leaves a value out."""
+    """
+    Mean of each quantity in each group and the ends of its interval, shape (quantity, group).
+
+    A NaN weight leaves a profile out.
+    """
     if weight is None:
-        weight = np.ones(values.shape)
+        weight = np.ones(group.shape)
     use = np.where(np.isfinite(weight) & (weight >= 0), group, -1)
     weight = np.where(use >= 0, weight, 0.0)
     with np.errstate(invalid="ignore", divide="ignore", over="ignore"):
-        mean = _sum(use, groups, weight * values) / _sum(use, groups, weight)
+        sums = np.array([_sum(use, groups, weight * x) for x in quantities])
+        mean = sums / _sum(use, groups, weight)
         mean = np.where(np.isfinite(mean), mean, np.nan)
         if resampling is None:
-            return mean, np.full(groups, np.nan), np.full(groups, np.nan)
-        above = resampling.by_day(use, groups, weight * values)
-        return mean, *resampling.interval(above, resampling.by_day(use, groups, weight))
+            return mean, np.full(mean.shape, np.nan), np.full(mean.shape, np.nan)
+        above = np.stack([resampling.by_day(use, groups, weight * x) for x in quantities], axis=1)
+        below = resampling.by_day(use, groups, weight)[:, np.newaxis, :]
+        return mean, *resampling.interval(above, below)
 
 
 def _vector(group: Any, groups: int, east: Floats, north: Floats, weight: Any) -> tuple[Any, Any]:
     """Length of the mean vector over the mean length, and the direction it comes from."""
-    u, _, _ = _weighted(east, weight, group, groups, None)
-    v, _, _ = _weighted(north, weight, group, groups, None)
+    (u, v), _low, _high = _weighted([east, north], weight, group, groups, None)
     length = np.hypot(u, v)
     return length, np.where(length > 1e-9, wind_from_direction(u, v), np.nan)
 
