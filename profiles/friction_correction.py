@@ -16,7 +16,9 @@ from backveer.profiles.layer_line import LayerLine
 if TYPE_CHECKING:
     from backveer.profiles.ekman import EkmanFit
 
-DEFAULT_DEPTH = 1500.0  # m, of friction where nothing tells it: common practice, on the safe side
+# Where nothing tells the depth of friction: the trade reads advection from 850 hPa upward, which in
+# cold air lies no higher above the sea than this (common practice, no source). [m]
+DEFAULT_DEPTH = 1250.0
 CLEARANCE = 1.25  # friction over a depth by Richardson number: choice, as for the free air
 LEAST_DEPTH = 300.0  # m, of friction: above a very stable night the air still swings; choice
 

@@ -166,7 +166,7 @@ def thermal_wind(
 
     Friction reaches to pi times the scale height of a well determined fit (Ekman, 1905: the first
     height where the wind is parallel to the geostrophic wind), otherwise to 1.25 times the
-    boundary-layer depth but at least 300 m, otherwise to 1500 m. What a corrected layer loses to
+    boundary-layer depth but at least 300 m, otherwise to 1250 m. What a corrected layer loses to
     the spiral carries the errors of the spiral's parameters and a quarter of itself, for the
     viscosity of real air is not constant. The inertial oscillation above a stable night is not
     friction and is not taken out.
