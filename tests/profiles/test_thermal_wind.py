@@ -5,6 +5,7 @@ from types import SimpleNamespace
 
 import numpy as np
 import pytest
+import synthetic
 from hypothesis import given, settings
 from hypothesis import strategies as st
 
@@ -88,7 +89,7 @@ def test_identity_of_two_winds(latitude, direction, veering, low, high):
     expected = f / (air.GAS_CONSTANT * np.log(85.0 / 70.0)) * low * high
     expected *= np.sin(np.radians(veering))
     assert told.layer_advection[0, 0] == pytest.approx(expected, abs=1e-12)
-    if abs(expected) > told.layer_error[0, 0]:
+    if abs(expected) > 2.0 * told.layer_error[0, 0]:
         assert told.layer_sense[0, 0] == ("warm" if expected > 0 else "cold")
     else:
         assert told.layer_sense[0, 0] == "none"
@@ -434,7 +435,7 @@ def test_friction_is_not_called_advection(latitude):
     assert told.friction_depth[0] == pytest.approx(np.pi * 280.0)
     assert told.friction_depth_from.tolist() == ["fit"]
     # the correction is no surer than the spiral
-    assert told.layer_error[0, 0] > 0.25 * told.layer_uncorrected_advection[0, 0]
+    assert told.layer_error[0, 0] > 0.5 * told.layer_uncorrected_advection[0, 0]
     surer = changed(
         fit,
         scale_height_error=np.zeros(1),
@@ -480,9 +481,69 @@ def test_error_of_the_correction_is_that_of_many_spirals():
     )
     told = layers(many, guesses, error=1e-6, pressures=[98000.0, 93000.0])
     off = told.layer_advection[:, 0] - true.layer_advection[0, 0]
-    of_model = 0.25 * (told.layer_advection - told.layer_uncorrected_advection)[:, 0]
+    of_model = 0.5 * (told.layer_advection - told.layer_uncorrected_advection)[:, 0]
     told_error = np.sqrt(np.mean(told.layer_error[:, 0] ** 2 - of_model**2))
     assert np.std(off) == pytest.approx(told_error, rel=0.08)
+
+
+def constant_viscosity_spiral(z, wind, sign, sheared):
+    """Scale height and amplitude of the spiral with slip that fits best, by plain least squares."""
+    best = np.inf, 0.0, 0.0j
+    for scale in np.geomspace(40.0, 1500.0, 150):
+        columns = [np.ones_like(z) + 0j, np.exp(-(1.0 + 1j * sign) * z / scale)]
+        if sheared:
+            columns.append(z + 0j)
+        basis = np.stack(columns, axis=1)
+        found = np.linalg.lstsq(basis, wind, rcond=None)[0]
+        misfit = np.sum(np.abs(wind - basis @ found) ** 2)
+        best = min(best, (misfit, scale, found[1]), key=lambda one: one[0])
+    return best[1:]
+
+
+@pytest.mark.slow
+def test_errors_hold_where_viscosity_varies_with_height():
+    # Independent truth: the Ekman balance solved numerically (tests/synthetic.py). A spiral of
+    # constant viscosity takes out too much here and too little there; the error must know it.
+    z = np.r_[10.0, np.arange(25.0, 3001.0, 25.0)]
+    p = air.standard_atmosphere(z)[1]
+    scores, sides = [], []
+    for latitude, shear in ((45.0, 0.0), (-45.0, 2e-3 - 1e-3j), (45.0, -1e-3 + 2e-3j)):
+        for viscosity in (
+            synthetic.neutral(latitude), synthetic.cubic(900.0), synthetic.cubic(500.0),
+        ):  # fmt: skip
+            for speed in (6.0, 12.0, 20.0):
+                for roughness in (1e-3, 0.05, 0.5):
+                    truth = synthetic.solve(speed, latitude, roughness, viscosity, shear=shear)
+                    stack = truth.stack(z, latitude, air_pressure=p)
+                    scale, amplitude = constant_viscosity_spiral(
+                        z, truth.wind(z), np.sign(latitude), shear != 0
+                    )
+                    fit = fit_like(
+                        1,
+                        "well determined",
+                        scale_height=scale,
+                        scale_height_error=0.0,
+                        departure_eastward_at_ground=amplitude.real,
+                        departure_northward_at_ground=amplitude.imag,
+                        departure_eastward_at_ground_error=0.0,
+                        departure_northward_at_ground_error=0.0,
+                        noise_length=50.0,
+                    )
+                    told = layers(stack, fit, error=0.3)
+                    wind = truth.geostrophic_wind(z)
+                    free = stack.replace(
+                        eastward_wind=wind.real[None], northward_wind=wind.imag[None]
+                    )
+                    true = layers(free, error=0.3).layer_uncorrected_advection
+                    score = (told.layer_advection - true) / told.layer_error
+                    scores.extend(score[told.layer_corrected])
+                    wrong = (told.layer_sense != "none") & (np.abs(true) < 1e-6)
+                    sides.extend(wrong[told.layer_corrected])
+    scores = np.abs(scores)
+    assert len(scores) > 150
+    assert 0.55 < np.mean(scores < 1.0) < 0.8
+    assert np.mean(scores < 2.0) > 0.97
+    assert np.mean(sides) < 0.02  # hardly ever is friction called advection
 
 
 @pytest.mark.parametrize(
