@@ -366,8 +366,9 @@ def _noise_variance(
         + (mean_u**2 + mean_v**2) * of_slope
         - 2.0 * both * (mean_u * slope_u + mean_v * slope_v)
     )
-    second: Floats = 2.0 * np.maximum(of_mean * of_slope - both**2, 0.0)
-    return np.maximum(first, 0.0) + second
+    second = 2.0 * np.maximum(of_mean * of_slope - both**2, 0.0)
+    variance: Floats = np.maximum(first, 0.0) + second
+    return variance
 
 
 def _height(z: Floats, x: Floats, target: Floats) -> Floats:
