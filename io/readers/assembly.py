@@ -22,6 +22,8 @@ from backveer.io.readers.preamble import is_rule, looks_like_units, metadata, un
 from backveer.io.readers.table import Table
 
 _COMMENT_STARTS = tuple("#%!;/ \t")
+_LONGEST_REMEMBERED = 400
+_INHERITED = 100  # of a file with so many blocks that each would carry all that was said above
 _FOOTER = 5  # lines from the end of the file in which "mean;4.5;231" is a footer and no row
 
 
@@ -98,7 +100,7 @@ class _Part:
     def all_metadata(self) -> tuple[tuple[str, str], ...]:
         own = {key for key, _ in self.metadata}
         kept = [(key, value) for key, value in self.inherited if key and key not in own]
-        return (*kept, *self.metadata)
+        return (*kept[:_INHERITED], *self.metadata)
 
 
 class Assembly:
@@ -111,16 +113,24 @@ class Assembly:
         As in Table.
     layout
         How the rows are cut.
+    last_line
+        Number of the last line of the file, near which footers stand.
     as_text
         Columns (table, place) to be kept as text, because an earlier try found them mixed.
     """
 
     def __init__(
-        self, source: str, encoding: str, layout: Layout, as_text: frozenset[tuple[int, int]]
+        self,
+        source: str,
+        encoding: str,
+        layout: Layout,
+        last_line: int,
+        as_text: frozenset[tuple[int, int]] = frozenset(),
     ) -> None:
         self._source = source
         self._encoding = encoding
         self._layout = layout
+        self._footer_from = last_line - _FOOTER
         self._as_text = as_text
         self._parts = [_Part([])]
         self._pending: list[tuple[int, str]] = []  # lines of text since the last row
@@ -147,7 +157,7 @@ class Assembly:
             part.metadata += _metadata(line if text is None else text, delimiter)
         for line in self._layout.between[1:]:
             text = uncommented(line, delimiter)
-            if text is not None:
+            if text is not None and not looks_like_units(self._layout.dialect.split(text)):
                 part.metadata += _metadata(text, delimiter)
 
     def add_columns(self, columns: list[NDArray[Any]], lines: NDArray[np.int64]) -> None:
@@ -155,7 +165,7 @@ class Assembly:
         self._parts[-1].columns.append(columns)
         self._parts[-1].lines.append(lines)
 
-    def add(self, lines: Sequence[str], numbers: Sequence[int], *, last: bool) -> None:
+    def add(self, lines: Sequence[str], numbers: Sequence[int]) -> None:
         """
         Take lines of the table.
 
@@ -165,10 +175,9 @@ class Assembly:
             Where another header stands; what is above it was taken.
         """
         end = len(lines)
-        if last:
-            while end and not lines[end - 1].strip():
-                end -= 1
-            lines, numbers = lines[:end], numbers[:end]
+        while end and not lines[end - 1].strip():
+            end -= 1
+        lines, numbers = lines[:end], numbers[:end]
         if not lines:
             return
         cut = None if self._pending else self._cut_whole(lines)
@@ -181,7 +190,7 @@ class Assembly:
             if all(held):
                 self.add_columns(columns, np.array(numbers, np.int64))
                 return
-        self._add_one_by_one(lines, numbers, last)
+        self._add_one_by_one(lines, numbers)
 
     def _cut_whole(self, lines: Sequence[str]) -> list[Sequence[str]] | None:
         """Columns of cells where all lines are rows of full width, otherwise None."""
@@ -195,9 +204,7 @@ class Assembly:
         ):
             return None
         if delimiter == " ":
-            if any('"' in line for line in lines):
-                return None
-            rows = [line.split() for line in lines]
+            rows = [layout.dialect.split(line) for line in lines]
             if set(map(len, rows)) != {width}:
                 return None
             return list(zip(*rows, strict=True))
@@ -218,12 +225,11 @@ class Assembly:
                 return values
         return words(cells, self._known)
 
-    def _add_one_by_one(self, lines: Sequence[str], numbers: Sequence[int], last: bool) -> None:
+    def _add_one_by_one(self, lines: Sequence[str], numbers: Sequence[int]) -> None:
         layout = self._layout
         dialect = layout.dialect
         rows: list[list[str]] = []
         of_rows: list[int] = []
-        footer_from = numbers[-1] - _FOOTER if last else numbers[-1] + 1
         for line, number in zip(lines, numbers, strict=True):
             if not line.strip():
                 continue
@@ -240,13 +246,13 @@ class Assembly:
                 line = line.expandtabs()
             cells = dialect.split(line)
             fits = layout.accepts(cells) and not (dialect.edges and dialect.cuts_a_word(line))
-            footer = number > footer_from and self._is_footer(cells)
+            footer = number > self._footer_from and self._is_footer(cells)
             if fits and layout.like_data(cells) and not footer:
                 if self._pending or self._header_pending:
                     self._settle(rows, of_rows)
                 rows.append(cells[: len(layout.header)])
                 of_rows.append(number)
-            elif fits and self._is_header(cells):
+            elif fits and self._is_header(cells) and (rows or self._parts[0].lines):
                 self._flush(rows, of_rows)
                 raise NewHeader(self._before_header(number))
             elif self._is_ragged(line):
@@ -274,7 +280,7 @@ class Assembly:
             for pair in _metadata(uncommented(line, delimiter) or line, delimiter)
         ]
         keys = {key for key, _ in said if key}
-        again = keys & {key for key, _ in part.metadata}
+        again = bool(keys) and any(key in keys for key, _ in part.metadata)
         if (again or (self._header_pending and keys)) and (rows or part.row_count):
             self._flush(rows, of_rows)
             if self._header_pending:
@@ -393,6 +399,15 @@ class Assembly:
         )
 
 
-@lru_cache(maxsize=1024)
 def _metadata(line: str, delimiter: str) -> tuple[tuple[str, str], ...]:
-    return () if is_rule(line) else tuple(metadata(line, delimiter))
+    if is_rule(line):
+        return ()
+    # An archive repeats these lines; long ones are not worth the memory.
+    if len(line) > _LONGEST_REMEMBERED:
+        return tuple(metadata(line, delimiter))
+    return _remembered_metadata(line, delimiter)
+
+
+@lru_cache(maxsize=1024)
+def _remembered_metadata(line: str, delimiter: str) -> tuple[tuple[str, str], ...]:
+    return tuple(metadata(line, delimiter))

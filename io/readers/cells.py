@@ -20,7 +20,7 @@ MISSING = frozenset(
 """Marks that say in words that there is no value (a single x may be a name: it is none)."""
 
 _NUMBER = {
-    ".": re.compile(r"[+-]?(\d+\.?\d*|\.\d+)([eE][+-]?\d+)?", re.ASCII),
+    ".": re.compile(r"[+-]?(\d+(\.\d*)?|\.\d+)([eE][+-]?\d+)?", re.ASCII),
     ",": re.compile(r"[+-]?(\d+(,\d+)?|,\d+)([eE][+-]?\d+)?", re.ASCII),
 }
 _TIME = re.compile(
@@ -54,7 +54,7 @@ def is_time(cell: str) -> bool:
     >>> is_time("14.05.2031 23:15"), is_time("23:15:00"), is_time("speed")
     (True, True, False)
     """
-    return len(cell) >= 4 and cell[0].isdecimal() and _TIME.fullmatch(cell) is not None
+    return 4 <= len(cell) < 40 and cell[0].isdecimal() and _TIME.fullmatch(cell) is not None
 
 
 def is_word(cell: str, decimal: str) -> bool:

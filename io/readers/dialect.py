@@ -14,6 +14,8 @@ from collections import Counter
 from collections.abc import Sequence
 from dataclasses import dataclass
 from functools import lru_cache
+from itertools import pairwise
+from typing import NamedTuple
 
 from backveer.io.readers.cells import MISSING, is_number, is_time
 
@@ -35,6 +37,7 @@ _SAMPLE_LINES = 40
 _SAMPLE_CELLS = 80
 _POOR = 0.2  # below this share of agreeing numbers, text is prose and not a table
 _FIXED_LINES = 400
+_DATE_AND_TIME = re.compile(r"(\d{4}[-/]\d\d?[-/]\d\d?|\d\d?[./]\d\d?[./]\d{4})\s+(\d\d?:\d\d)")
 _LONGEST_LINE = 4000  # fixed columns are for the eye; longer lines were never meant for it
 
 
@@ -51,11 +54,14 @@ class Dialect:
         ``"."`` or ``","``.
     edges
         Where each fixed column begins; empty otherwise.
+    joins_times
+        Whether a date and the clock time after it, with white space between, are one cell.
     """
 
     delimiter: str
     decimal: str
     edges: tuple[int, ...] = ()
+    joins_times: bool = False
 
     def split(self, line: str) -> list[str]:
         """
@@ -72,6 +78,8 @@ class Dialect:
                 line[start:end].strip().strip('"')
                 for start, end in zip(self.edges, ends, strict=True)
             ]
+        if self.joins_times:
+            line = _DATE_AND_TIME.sub(r"\1T\2", line)
         if '"' in line:
             return _split_quoted(line, self.delimiter)
         if self.delimiter == " ":
@@ -97,6 +105,14 @@ def _split_quoted(line: str, delimiter: str) -> list[str]:
     return [cell.strip().strip('"').strip() for cell in cells]
 
 
+class Column(NamedTuple):
+    """A fixed column: where its words stand in the sample, and where its cells begin."""
+
+    start: int
+    end: int
+    edge: int
+
+
 @dataclass(frozen=True)
 class Detected:
     """A dialect, the cells that its lines agree on, how well it fits (0 to 1), and its columns."""
@@ -104,7 +120,7 @@ class Detected:
     dialect: Dialect
     width: int
     score: float
-    spans: tuple[tuple[int, int], ...] = ()
+    columns: tuple[Column, ...] = ()
 
 
 def detect(lines: Sequence[str]) -> Detected | None:
@@ -124,29 +140,30 @@ def detect(lines: Sequence[str]) -> Detected | None:
     Examples
     --------
     >>> detect(["Height;Speed", "10;4,5", "20;5,25"])
-    Detected(dialect=Dialect(delimiter=';', decimal=',', edges=()), width=2, score=..., spans=())
+    Detected(dialect=Dialect(delimiter=';', decimal=',', ...), width=2, score=..., columns=())
     """
     # What stands above a table is no table: of a long sample, the later part tells more.
     lines = [line for line in lines if line.strip()]
     body = lines[len(lines) // 3 :] if len(lines) > 8 else lines
-    step = max(1, len(body) // _SAMPLE_LINES)
+    step = len(body) // _SAMPLE_LINES | 1  # an even one would see one half of alternating lines
     sample = body[::step]
     best: Detected | None = None
     for delimiter, decimal in _CANDIDATES:
         if delimiter != " " and not any(delimiter in line for line in sample):
             continue
+        if delimiter == " " and best and best.dialect.delimiter == "\t" and best.score > 0.6:
+            continue  # tabs are white space too, but between two of them a cell may be empty
         found = _scored(Dialect(delimiter, decimal), sample)
         if found and (best is None or found.score > best.score + 1e-9):
             best = found
-    if (best is None or (best.dialect.delimiter == " " and best.score < 1)) and max(
-        map(len, lines), default=0
-    ) < _LONGEST_LINE:
-        best = _better_fixed(best, body)
+    longest = max(map(len, lines), default=0)
+    if (best is None or best.dialect.delimiter == " ") and longest < _LONGEST_LINE:
+        best = _better_fixed(best, lines)
     return best if best is not None and best.score >= _POOR else None
 
 
 def _scored(
-    dialect: Dialect, sample: Sequence[str], spans: tuple[tuple[int, int], ...] = ()
+    dialect: Dialect, sample: Sequence[str], columns: tuple[Column, ...] = ()
 ) -> Detected | None:
     rows = [dialect.split(line) for line in sample]
     widths = Counter(len(row) for row in rows if len(row) > 1)
@@ -156,8 +173,9 @@ def _scored(
     if dialect.edges:
         agreeing -= sum(dialect.cuts_a_word(line) for line in sample)
     cells = [cell for row in rows if len(row) == width for cell in row[:_SAMPLE_CELLS]]
-    worth = sum(_worth(cell, dialect.decimal) for cell in cells)
-    return Detected(dialect, width, agreeing / len(rows) * worth / len(cells), spans)
+    # A cell that long is none, and is not to be remembered either.
+    worth = sum(_worth(cell, dialect.decimal) for cell in cells if len(cell) < 40)
+    return Detected(dialect, width, agreeing / len(rows) * worth / len(cells), columns)
 
 
 @lru_cache(maxsize=4096)
@@ -168,46 +186,50 @@ def _worth(cell: str, decimal: str) -> float:
     return 0.9 if cell in MISSING else 0.0
 
 
-def _better_fixed(best: Detected | None, body: Sequence[str]) -> Detected | None:
+def _better_fixed(best: Detected | None, lines: Sequence[str]) -> Detected | None:
     """Take fixed columns where white space leaves rows of unequal length, if they mend that."""
-    rows = [line.expandtabs() for line in body if _mostly_numbers(line)][:_FIXED_LINES]
-    spans = _spans(rows)
-    if len(spans) < 2:
+    rows = [line.expandtabs() for line in lines if _mostly_numbers(line)][:_FIXED_LINES]
+    if len({len(row.split()) for row in rows}) < 2:
         return best
-    edges = _edges(spans)
+    columns = _columns(rows)
+    if len(columns) < 2:
+        return best
+    edges = tuple(column.edge for column in columns)
     plain = [_scored(Dialect(" ", decimal), rows) for decimal in ".,"]
-    fixed = [_scored(Dialect("", decimal, edges), rows, spans) for decimal in ".,"]
-    rival = max((found.score for found in (best, *plain) if found), default=0.0)
+    fixed = [_scored(Dialect("", decimal, edges), rows, columns) for decimal in ".,"]
+    rival = max((found.score for found in plain if found), default=0.0)
     winner = max((found for found in fixed if found), key=lambda f: f.score, default=None)
-    return winner if winner and winner.score > rival + 0.005 else best
+    return winner if winner and winner.score > rival else best
 
 
 def _mostly_numbers(line: str) -> bool:
-    words = line.split()
+    words = [word for word in line.split() if len(word) < 40]
     return sum(_worth(word, ".") == 1 or _worth(word, ",") == 1 for word in words) > 0.4 * len(
         words
     )
 
 
-def _spans(lines: Sequence[str]) -> tuple[tuple[int, int], ...]:
-    """Start and end of the columns that blanks in each line set apart."""
-    columns: list[tuple[int, int]] = []
-    for start, end in sorted(m.span() for line in lines for m in re.finditer(r"\S+", line)):
-        if columns and start <= columns[-1][1]:
-            columns[-1] = (columns[-1][0], max(end, columns[-1][1]))
-        else:
-            columns.append((start, end))
+def _columns(lines: Sequence[str]) -> tuple[Column, ...]:
+    """Columns that blanks in each line set apart."""
+    groups: list[list[tuple[int, int]]] = []
+    end = -1
+    for span in sorted(m.span() for line in lines for m in re.finditer(r"\S+", line)):
+        if span[0] > end:
+            groups.append([])
+        groups[-1].append(span)
+        end = max(end, span[1])
+    columns: list[Column] = []
+    flush_left = False
+    for group in groups:
+        start, end = min(group)[0], max(stop for _, stop in group)
+        # What stands flush left grows to the right, into the gap; else the gap is the next one's.
+        edge = 0 if not columns else (start if flush_left else columns[-1].end)
+        columns.append(Column(start, end, edge))
+        flush_left = {first for first, _ in group} == {start} and len({s for _, s in group}) > 1
     return tuple(columns)
 
 
-def _edges(spans: Sequence[tuple[int, int]]) -> tuple[int, ...]:
-    # Numbers stand flush right and grow to the left: the gap belongs to what follows it.
-    return (0, *(end for _, end in spans[:-1]))
-
-
-def fixed_columns(
-    header: str, spans: Sequence[tuple[int, int]]
-) -> tuple[list[str], tuple[int, ...]]:
+def fixed_columns(header: str, columns: Sequence[Column]) -> tuple[list[str], tuple[int, ...]]:
     """
     Names and edges of fixed columns under a header.
 
@@ -216,7 +238,8 @@ def fixed_columns(
 
     Examples
     --------
-    >>> fixed_columns("Height  Wind speed  Dir", [(2, 6), (14, 18), (20, 23)])
+    >>> columns = [Column(2, 6, 0), Column(14, 18, 6), Column(20, 23, 18)]
+    >>> fixed_columns("Height  Wind speed  Dir", columns)
     (['Height', 'Wind speed', 'Dir'], (0, 6, 18))
     """
     pattern = r"\S+(?: \S+)*" if re.search(r"\S {2,}\S", header) else r"\S+"
@@ -224,20 +247,23 @@ def fixed_columns(
     under: dict[int, int] = {}  # place of the name over each column
     lone = []
     for place, (_, span) in enumerate(names):
-        distance, column = min((_apart(span, other), c) for c, other in enumerate(spans))
-        if column not in under:
-            under[column] = place
-        elif distance < _apart(names[under[column]][1], spans[column]):
-            lone.append(under[column])
-            under[column] = place
+        distance, nearest = min((_apart(span, column), c) for c, column in enumerate(columns))
+        if nearest not in under:
+            under[nearest] = place
+        elif distance < _apart(names[under[nearest]][1], columns[nearest]):
+            lone.append(under[nearest])
+            under[nearest] = place
         else:
             lone.append(place)
-    columns = [(span, names[under[c]][0] if c in under else "") for c, span in enumerate(spans)] + [
-        (names[place][1], names[place][0]) for place in lone
-    ]
-    columns.sort()
-    return [name for _, name in columns], _edges([span for span, _ in columns])
+    named = [
+        (column, names[under[c]][0] if c in under else "") for c, column in enumerate(columns)
+    ] + [(Column(*names[place][1], 0), names[place][0]) for place in lone]
+    named.sort()
+    edges = [0]
+    for (before, _), (column, _) in pairwise(named):
+        edges.append(max(column.edge, before.end))
+    return [name for _, name in named], tuple(edges)
 
 
-def _apart(one: tuple[int, int], other: tuple[int, int]) -> int:
-    return min(abs(one[0] - other[0]), abs(one[1] - other[1]))
+def _apart(span: tuple[int, int], column: Column) -> int:
+    return min(abs(span[0] - column.start), abs(span[1] - column.end))

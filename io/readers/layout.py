@@ -18,6 +18,7 @@ from backveer.io.readers.preamble import is_rule, looks_like_units, metadata, un
 
 _KIND_ROWS = 60
 _KNOWN_LIMIT = 256
+_LONGEST_KNOWN = 20_000
 _HEADER_SEARCH = 200  # lines in which a known header is looked for
 
 
@@ -100,7 +101,7 @@ def find(lines: Sequence[str], *, nameless: bool = False, use_known: bool = True
                 break
     found = _find_anew(lines, nameless)
     layout = found.layout
-    if layout.between and not layout.dialect.edges:
+    if layout.between and not layout.dialect.edges and len(layout.between[0]) < _LONGEST_KNOWN:
         if len(_known) >= _KNOWN_LIMIT:
             _known.clear()
         _known[layout.between[0]] = layout
@@ -145,13 +146,13 @@ def _find_anew(lines: Sequence[str], nameless: bool) -> Found:
 
 def _sampled(lines: Sequence[str], plain: Sequence[int]) -> list[str]:
     body = plain[len(plain) // 3 :] if len(plain) > 8 else plain
-    return [lines[place] for place in body[:: max(1, len(body) // _KIND_ROWS)]]
+    return [lines[place] for place in body[:: len(body) // _KIND_ROWS | 1]]
 
 
 def _kind(cells: Sequence[str], decimal: str) -> str:
     said = [cell for cell in cells if cell not in MISSING]
     if not said:
-        return "e"
+        return "e" if any(cells) else "_"
     if sum(is_number(cell, decimal) for cell in said) >= 0.5 * len(said):
         return "n"
     return "t" if sum(map(is_time, said)) >= 0.5 * len(said) else "w"
@@ -170,9 +171,10 @@ def _with_header(
     lines: Sequence[str], first: int, detected: Detected, kinds: str, nameless: bool
 ) -> Found:
     dialect = detected.dialect
-    trailing = kinds[-1] == "e"
+    trailing = kinds[-1] == "_"
     plain: list[int] = []
     comments: list[int] = []
+    texts: dict[int, str] = {}
     for place in range(first - 1, -1, -1):
         line = lines[place]
         if is_rule(line):
@@ -183,6 +185,7 @@ def _with_header(
             if not is_rule(text) and (not comments or comments[-1] >= 0):
                 fits = _names(text, detected, trailing) and not _is_metadata(text, dialect)
                 comments.append(place if fits else -1)
+                texts[place] = text
         elif _names(line, detected, trailing) and not _mostly_numbers(line, dialect):
             plain.append(place)
         else:
@@ -193,12 +196,20 @@ def _with_header(
         candidates = [commented[-1], *candidates]
     elif not candidates:
         candidates = commented
+    else:
+        candidates += [
+            place
+            for place in commented
+            if place > plain[0] and looks_like_units(_bracket_cells(texts[place], dialect))
+        ]
     if not candidates:
         row = dialect.split(lines[first])
         if any(
             kind in "nt" and is_word(cell, dialect.decimal)
             for cell, kind in zip(row, kinds, strict=True)
         ):
+            if first + 1 == len(lines):
+                raise _no_table(lines)
             return _found(lines, [first], first + 1, detected, kinds)
         return _without_header(lines, first, detected, kinds, nameless)
     return _found(lines, candidates, first, detected, kinds)
@@ -209,7 +220,7 @@ def _found(
 ) -> Found:
     """Choose header and units among the rows of text above the first row."""
     dialect = detected.dialect
-    trailing = kinds[-1] == "e"
+    trailing = kinds[-1] == "_"
     texts = [uncommented(lines[at], dialect.delimiter) or lines[at] for at in candidates]
     cells = [_names(text, detected, trailing) or [] for text in texts]
     raw = [_bracket_cells(text, dialect) for text in texts]
@@ -218,7 +229,7 @@ def _found(
     header = cells[header_i]
     units: tuple[str, ...] = ()
     if dialect.edges:
-        names, edges = fixed_columns(texts[header_i].expandtabs(), detected.spans)
+        names, edges = fixed_columns(texts[header_i].expandtabs(), detected.columns)
         kinds = _kinds_of_edges(names, edges, dialect, kinds)
         dialect = Dialect("", dialect.decimal, edges)
         header = names
@@ -234,7 +245,7 @@ def _found(
             width,
             tuple(header),
             units,
-            kinds[: len(header)],
+            kinds[: len(header)].replace("_", "e"),
             tuple(lines[candidates[header_i] : first]),
             len(cells) - 1 - (header_i if units_at is None else units_at),
         ),
@@ -256,7 +267,7 @@ def _names(line: str, detected: Detected, trailing: bool) -> list[str] | None:
     """Cells of a line that has as many as the rows, otherwise None."""
     dialect, width = detected.dialect, detected.width
     if dialect.edges:
-        names, _ = fixed_columns(line.expandtabs(), detected.spans)
+        names, _ = fixed_columns(line.expandtabs(), detected.columns)
         return names if sum(map(bool, names)) >= max(2, 0.6 * width) else None
     for cells in _cuts(line, dialect):
         if len(cells) == width + 1 and not cells[-1]:
@@ -272,13 +283,14 @@ def _cuts(line: str, dialect: Dialect) -> list[list[str]]:
     """Ways to cut a header: by white space, names may hold blanks and units in brackets."""
     cuts = [dialect.split(line)]
     if dialect.delimiter == " ":
-        joined = re.sub(r"\s+(?=[(\[])", "\0", line.strip())
+        cuts.append(_bracket_cells(line, dialect))
+        joined = re.sub(r" (?=[(\[])", "\0", " ".join(line.split()))
         cuts.append([m.group().replace("\0", " ") for m in re.finditer(_BRACKETED, joined)])
         cuts.append([part.strip() for part in re.split(r"\s{2,}|\t", line.strip())])
     return cuts
 
 
-_BRACKETED = re.compile(r"(?:\([^)]*\)|\[[^]]*\]|\S)+")
+_BRACKETED = re.compile(r"(?:\([^)]{0,40}\)|\[[^]]{0,40}\]|\S)+")
 
 
 def _bracket_cells(line: str, dialect: Dialect) -> list[str]:
@@ -307,6 +319,12 @@ def _without_header(
         cells = dialect.split(uncommented(lines[place], dialect.delimiter) or lines[place])
         words = [cell for cell in cells if cell and is_word(cell, dialect.decimal)]
         if len(words) >= max(2, 0.5 * width) and not _is_metadata(lines[place], dialect):
+            if dialect.delimiter == " " and len(cells) == width - 1 and "tt" in kinds:
+                joining = Dialect(" ", dialect.decimal, joins_times=True)
+                if len(joining.split(lines[first])) == width - 1:
+                    narrower = Detected(joining, width - 1, detected.score)
+                    one_less = kinds.replace("tt", "t", 1)
+                    return _with_header(lines, first, narrower, one_less, nameless)
             raise NotATable(
                 f"the header has {len(cells)} names and the rows have {width} cells",
                 "Give each column one name; put names that hold the delimiter in quotes",
@@ -320,9 +338,9 @@ def _without_header(
             "--column height='column 1'",
             line=first + 1,
         )
-    count = width - (kinds[-1] == "e")
+    count = width - (kinds[-1] == "_")
     header = tuple(f"column {number + 1}" for number in range(count))
-    layout = Layout(dialect, width, header, (), kinds[:count], (), 0)
+    layout = Layout(dialect, width, header, (), kinds[:count].replace("_", "e"), (), 0)
     return Found(layout, first, first, False)
 
 

@@ -8,13 +8,14 @@ from collections.abc import Sequence
 from backveer.io.readers.cells import MISSING
 
 _COMMENT = re.compile(r"\s*(#+|%+|!+|//(?!/)|;+)\s?")
-_RULE = re.compile(r"[\s\-=_+|*~.,;#]*[-=_*~#]{3}[\s\-=_+|*~.,;#]*")
+_RULE = re.compile(r"[-=_*~#]{3}")
 
-# A key is words; the colon of a clock time ends none.
+# A key is words; the colon of a clock time ends none. No pattern here may look at the same
+# blanks twice: a hostile line of a million of them would take hours.
 _KEY = r"(?P<key>[^\W\d_](?:[^:=\t;|]|(?<=\d):(?=\d))*?)"
-_MARKED = re.compile(_KEY + r"\s*(?:(?<!\d):|:(?!\d)|=)\s*(?P<value>.*)")
-_FOLLOWED_BY_NUMBER = re.compile(r"(?P<key>[^\W\d_][^\d:=,;\t|]*?)\s+(?P<value>[-+]?\d.*)")
-_SEVERAL = re.compile(r"\s*[;,|\t]\s*|\s{2,}")
+_MARKED = re.compile(_KEY + r"(?:(?<!\d):|:(?!\d)|=)(?P<value>.*)")
+_FOLLOWED_BY_NUMBER = re.compile(r"(?P<key>[^\W\d_][^\d:=,;\t|+-]*)(?<=\s)(?P<value>[-+]?\d.*)")
+_SEVERAL = re.compile(r"[;,|\t]|\s{2,}")
 
 # Atoms of unit signs, to recognise that a row holds units, not to understand them.
 _ATOM = (
@@ -57,7 +58,9 @@ def uncommented(line: str, delimiter: str | None = None) -> str | None:
 
 def is_rule(line: str) -> bool:
     """Whether a line only draws a line (``-----``, ``=== ===``) or is blank."""
-    return not line.strip() or _RULE.fullmatch(line) is not None
+    return not line.strip(" \t\r\f\v-=_+|*~.,;#") and (
+        not line.strip() or _RULE.search(line) is not None
+    )
 
 
 def metadata(line: str, delimiter: str) -> list[tuple[str, str]]:
@@ -78,7 +81,8 @@ def metadata(line: str, delimiter: str) -> list[tuple[str, str]]:
     line = line.strip().strip(",;|\t").strip()
     if not line:
         return []
-    several = [_MARKED.fullmatch(part) for part in _SEVERAL.split(line)]
+    parts = [part.strip() for part in _SEVERAL.split(line) if part.strip()]
+    several = [_MARKED.fullmatch(part) for part in parts]
     found = [match for match in several if match is not None]
     if len(several) == 1 or len(found) < len(several):
         match = _MARKED.fullmatch(line)
@@ -91,7 +95,7 @@ def metadata(line: str, delimiter: str) -> list[tuple[str, str]]:
         else:
             match = _FOLLOWED_BY_NUMBER.fullmatch(line)
             found = [match] if match else []
-            two = [_bare(part) for part in _SEVERAL.split(line)]
+            two = [_bare(part) for part in parts]
             if not match and len(two) == 2 and two[0][:1].isalpha() and "," not in line:
                 return [(two[0], two[1])]
     pairs = [(_bare(match["key"]), _bare(match["value"].strip(",;|\t"))) for match in found]
@@ -125,5 +129,6 @@ def looks_like_units(cells: Sequence[str]) -> bool:
     good = sum(
         bool(_BRACKETS.fullmatch(cell) or _UNIT.fullmatch(cell) or _TIME_FORMAT.fullmatch(cell))
         for cell in said
+        if len(cell) < 40
     )
     return bool(said) and any(cell != "-" for cell in said) and good >= 0.6 * len(said)

@@ -27,6 +27,7 @@ from backveer.io.readers.table import Table
 LARGE = 4 << 20
 """Bytes from which a file is worth importing pyarrow (0.3 s), and the size of a piece."""
 
+_MOST_HEADERS = 100  # different ones in one file; each costs a search of its own
 _HEAD = 256 << 10  # where a large file must have its header
 
 
@@ -74,7 +75,7 @@ class _File:
 
     def tables(self) -> list[Table]:
         """All tables, from one header to the next different one."""
-        start, number = 0, 1
+        start, number, headers = 0, 1, 1
         tables: list[Table] = []
         inherited: tuple[tuple[str, str], ...] = ()
         while True:
@@ -90,6 +91,13 @@ class _File:
             tables += read
             if rest is None:
                 return tables
+            headers += 1
+            if headers > _MOST_HEADERS:
+                raise NotATable(
+                    f"has more than {_MOST_HEADERS} different headers",
+                    "Split it into one file a table",
+                    line=rest,
+                )
             inherited = tables[-1].metadata if tables else ()
             start = _nth_line(self.text, start, rest - number)
             number = rest
@@ -125,9 +133,10 @@ class _File:
         offset = _nth_line(self.text, start, first - number)
         layout = found.layout
         large = len(self.text) - start > LARGE
+        last_line = number + self.text.count(b"\n", start) - self.text.endswith(b"\n")
         as_text: frozenset[tuple[int, int]] = frozenset()
         while True:
-            assembly = Assembly(self.source, self.encoding, layout, as_text)
+            assembly = Assembly(self.source, self.encoding, layout, last_line, as_text)
             assembly.preamble(head[: found.header_at], numbers, inherited)
             arrays = by_arrow(self.text, offset, layout) if large and not as_text else None
             rest = None
@@ -136,11 +145,11 @@ class _File:
                     assembly.add_columns(arrays, np.arange(first, first + len(arrays[0])))
                 elif not large:
                     rows = slice(found.first_row, None)
-                    assembly.add(head[rows], numbers[rows], last=True)
+                    assembly.add(head[rows], numbers[rows])
                 else:
-                    for piece, count, last in _pieces(self.text, offset, first):
+                    for piece, count in _pieces(self.text, offset, first):
                         lines, of_lines = _lines(piece, count)
-                        assembly.add(lines, of_lines, last=last)
+                        assembly.add(lines, of_lines)
             except NewHeader as other:
                 rest = other.line
             try:
@@ -193,8 +202,8 @@ def _nth_line(text: bytes, start: int, count: int) -> int:
     return start
 
 
-def _pieces(text: bytes, start: int, number: int) -> Iterator[tuple[bytes, int, bool]]:
-    """Whole lines of about ``LARGE`` bytes, the number of their first, and whether they end it."""
+def _pieces(text: bytes, start: int, number: int) -> Iterator[tuple[bytes, int]]:
+    """Whole lines of about ``LARGE`` bytes, and the number of their first."""
     while start < len(text):
         end = text.rfind(b"\n", start, start + LARGE) + 1
         if end == 0:
@@ -202,7 +211,7 @@ def _pieces(text: bytes, start: int, number: int) -> Iterator[tuple[bytes, int, 
         if start + LARGE >= len(text):
             end = len(text)
         piece = text[start:end]
-        yield piece.removesuffix(b"\n"), number, end >= len(text)
+        yield piece.removesuffix(b"\n"), number
         number += piece.count(b"\n")
         start = end
 
