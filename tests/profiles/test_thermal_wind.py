@@ -358,6 +358,27 @@ def test_errors_are_those_of_many_noisy_profiles(length):
     assert np.all((spread > 0.85) & (spread < 1.04)), spread
 
 
+def test_error_is_what_each_level_can_change():
+    # Independent: every level's wind moved by a little, one at a time, with no formula in between.
+    z = np.r_[1600.0, 1640.0, 1690.0, 1800.0, 2900.0, 3300.0]  # lopsided: mean and slope correlate
+    p = air.standard_atmosphere(z)[1]
+    x = -np.log(p)
+    u, v = 30.0 * (x - x[0]) + 6.0, 22.0 * (x - x[0]) + 3.0
+    step, sigma = 1e-3, 0.01
+    rows = np.zeros((13, 2, 6))
+    rows[np.arange(1, 7), 0, np.arange(6)] = step
+    rows[np.arange(7, 13), 1, np.arange(6)] = step
+    stack = Stack.of(
+        height=z, air_pressure=p, eastward_wind=u + rows[:, 0], northward_wind=v + rows[:, 1],
+        latitude=np.full(13, 60.0),
+    )  # fmt: skip
+    told = layers(stack, fit_like(13, noise_length=0.0), pressures=[82000.0, 68500.0], error=sigma)
+    assert (told.layer_why == "").all()
+    change = (told.layer_advection[1:, 0] - told.layer_advection[0, 0]) / step
+    expected = sigma * np.sqrt(np.sum(change**2))
+    assert told.layer_error[0, 0] == pytest.approx(expected, rel=1e-3)
+
+
 def test_waves_widen_the_error():
     z = np.linspace(1500.0, 3100.0, 60)
     p = air.standard_atmosphere(z)[1]
