@@ -3,6 +3,8 @@
 from __future__ import annotations
 
 import csv
+import subprocess
+import sys
 from pathlib import Path
 
 import numpy as np
@@ -585,3 +587,37 @@ def test_a_header_at_once_under_a_header_leads_on():
             if large:
                 patch.setattr(text, "LARGE", 20)
             assert many(bare, nameless=True)
+
+
+READ_AND_MEASURE = """
+import resource, sys
+import numpy
+from backveer.io.readers.files import open_inputs
+from backveer.io.readers.text import read_tables
+
+peak = lambda: resource.getrusage(resource.RUSAGE_SELF).ru_maxrss * 1024
+before = peak()
+(read,) = open_inputs(sys.argv[1:])
+(table,) = read_tables(*read)
+print(len(table.lines), peak() - before, "pandas" in sys.modules)
+"""
+
+
+@pytest.mark.slow
+@pytest.mark.parametrize("odd", ["", "1,2\n"], ids=["regular", "one ragged row"])
+def test_a_large_file_needs_less_than_six_times_its_size(tmp_path, odd):
+    piece = "".join(
+        f"2031-05-14 {k // 60 % 24:02d}:{k % 60:02d},{k / 8:.2f},{k % 397 / 7:.2f},{k % 360}\n"
+        for k in range(50_000)
+    )
+    path = tmp_path / "large.csv"
+    path.write_text("time,height,speed,direction\n" + piece * 60 + odd)
+    answer = subprocess.run(
+        [sys.executable, "-c", READ_AND_MEASURE, str(path)],
+        capture_output=True,
+        text=True,
+        check=True,
+    ).stdout.split()
+    assert int(answer[0]) == 3_000_000
+    assert int(answer[1]) < 6 * path.stat().st_size
+    assert answer[2] == "False"
