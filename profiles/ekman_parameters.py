@@ -52,8 +52,9 @@ def describe(member: Member, delta: Any, coefficients: list[Any], unit: Any, f: 
     -------
     dict
         ``geostrophic`` G, ``shear`` S, ``amplitude`` A and, along the stress, ``stress`` dW/dz at
-        the ground (complex), ``scale_height``, ``eddy_viscosity`` K = |f| delta^2 / 2, ``cross_isobar_angle``
-        arg(dW/dz) - arg G at the ground [degree] and ``friction_velocity`` sqrt(K |dW/dz|).
+        the ground (complex), ``scale_height``, ``eddy_viscosity`` K = |f| delta^2 / 2,
+        ``cross_isobar_angle`` arg(dW/dz) - arg G at the ground [degree] and
+        ``friction_velocity`` sqrt(K |dW/dz|).
     """
     g = coefficients[member.wind][:, 0]
     amplitude = member.sign * coefficients[member.decay][:, 0]
