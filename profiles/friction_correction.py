@@ -6,15 +6,13 @@ All is written out in real numbers, which mirror exactly and do not depend on th
 
 from __future__ import annotations
 
-from typing import TYPE_CHECKING, Any
+from typing import Any
 
 import numpy as np
 
+from backveer.profiles.ekman import EkmanFit
 from backveer.profiles.labels import Bools, Floats, Words
 from backveer.profiles.layer_line import LayerLine
-
-if TYPE_CHECKING:
-    from backveer.profiles.ekman import EkmanFit
 
 # Where nothing tells the depth of friction: the trade reads advection from 850 hPa upward, which in
 # cold air lies no higher above the sea than this (common practice, no source). [m]
@@ -141,4 +139,5 @@ def spiral_variance(
     sign = np.sign(f)[:, np.newaxis]
     stretch = z / fit.scale_height[:, np.newaxis] ** 2
     by_scale = change((east - sign * north) * stretch, (north + sign * east) * stretch)
-    return np.where(amplitude > 0, of_amplitude, 0.0) + (by_scale * fit.scale_height_error) ** 2
+    of_scale: Floats = (by_scale * fit.scale_height_error) ** 2
+    return np.where(amplitude > 0, of_amplitude, 0.0) + of_scale

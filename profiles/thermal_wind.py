@@ -30,12 +30,13 @@ from __future__ import annotations
 
 from collections.abc import Sequence
 from dataclasses import dataclass
-from typing import TYPE_CHECKING, Any
+from typing import Any
 
 import numpy as np
 
 from backveer.profiles.air import GAS_CONSTANT
 from backveer.profiles.earth import Coriolis
+from backveer.profiles.ekman import EkmanFit
 from backveer.profiles.friction_correction import friction_depth, frictional_wind, spiral_variance
 from backveer.profiles.grid import at_height, compact, integral_between, ordered_sum
 from backveer.profiles.labels import Bools, Floats, Labelled, Words, variable
@@ -43,9 +44,6 @@ from backveer.profiles.layer_line import LayerLine, layer_line, noise_gain
 from backveer.profiles.level_pressure import level_pressure
 from backveer.profiles.stack import Stack
 from backveer.profiles.wind_error import wind_error
-
-if TYPE_CHECKING:
-    from backveer.profiles.ekman import EkmanFit
 
 # Pa, standard isobaric surfaces: WMO-No. 306, Manual on Codes, FM 35 TEMP.
 STANDARD_PRESSURES = (
@@ -183,8 +181,8 @@ def thermal_wind(
 
     Examples
     --------
-    >>> from types import SimpleNamespace
     >>> from backveer.profiles.earth import coriolis
+    >>> from backveer.profiles.ekman import fit
     >>> stack = Stack.of(
     ...     height=[3000.0, 5600.0],
     ...     air_pressure=[70000.0, 50000.0],
@@ -192,11 +190,8 @@ def thermal_wind(
     ...     northward_wind=[10.0, 10.0],
     ...     latitude=45.0,
     ... )
-    >>> nothing = np.array([np.nan])
-    >>> fit = SimpleNamespace(
-    ...     verdict=np.array(["not determined"]), noise_length=nothing, scale_height=nothing
-    ... )
-    >>> told = thermal_wind(stack, coriolis(stack), fit, error=0.5, pressures=[70000.0, 50000.0])
+    >>> f = coriolis(stack)
+    >>> told = thermal_wind(stack, f, fit(stack, f), error=0.5, pressures=[70000.0, 50000.0])
     >>> (told.layer_advection * 3600.0).round(2), told.layer_sense
     (array([[0.38]]), array([['warm']], dtype=object))
     """

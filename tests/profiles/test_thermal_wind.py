@@ -9,7 +9,8 @@ import synthetic
 from hypothesis import given, settings
 from hypothesis import strategies as st
 
-from backveer.profiles import air, earth
+from backveer.profiles import air, earth, ekman
+from backveer.profiles.friction_correction import frictional_wind
 from backveer.profiles.labels import labels
 from backveer.profiles.stack import Stack, wind_components
 from backveer.profiles.thermal_wind import ThermalWind, thermal_wind
@@ -505,6 +506,33 @@ def test_error_of_the_correction_is_that_of_many_spirals():
     of_model = 0.5 * (told.layer_advection - told.layer_uncorrected_advection)[:, 0]
     told_error = np.sqrt(np.mean(told.layer_error[:, 0] ** 2 - of_model**2))
     assert np.std(off) == pytest.approx(told_error, rel=0.08)
+
+
+@pytest.mark.parametrize("latitude", [50.0, -50.0])
+def test_the_fit_itself_takes_friction_out(latitude):
+    # No stand-in here: a solved boundary layer under a sheared geostrophic wind, noise, the fit.
+    z = np.r_[10.0, np.arange(25.0, 3001.0, 25.0)]
+    shear = 2e-3 + 1e-3j * np.sign(latitude)
+    truth = synthetic.solve(12.0, latitude, 0.05, synthetic.neutral(latitude), shear=shear)
+    noise = 0.2 * np.random.default_rng(0).normal(size=(2, 1, z.size))
+    p = air.standard_atmosphere(z)[1]
+    stack = truth.stack(z, latitude, noise[0] + 1j * noise[1], air_pressure=p)
+    error = np.full(1, 0.2)
+    fit = ekman.fit(stack, earth.coriolis(stack), error=error)
+    assert fit.verdict.tolist() == ["well determined"]
+    told = layers(stack, fit, error=error)
+    wind = truth.geostrophic_wind(z)
+    free = stack.replace(eastward_wind=wind.real[None], northward_wind=wind.imag[None])
+    true = layers(free, error=error).layer_uncorrected_advection[0, :3]
+    assert np.all(np.abs(told.layer_advection[0, :3] - true) < 2.0 * told.layer_error[0, :3])
+    assert told.layer_uncorrected_advection[0, 0] - true[0] > 2e-4  # what friction feigns, K/s
+    assert abs(told.layer_advection[0, 0] - true[0]) < 0.2e-4
+    # the frictional part is the fit's own
+    with_it, without = ekman.wind(fit, stack.height), ekman.geostrophic_wind(fit, stack.height)
+    f = earth.coriolis_parameter(stack.latitude)
+    drag = frictional_wind(fit, f, np.array([True]), stack.height)
+    for whole, part, ours in zip(with_it, without, drag, strict=True):
+        np.testing.assert_allclose(ours, whole - part, rtol=0, atol=1e-12)
 
 
 def constant_viscosity_spiral(z, wind, sign, sheared):
