@@ -5,6 +5,7 @@ import pytest
 from hypothesis import given
 from hypothesis import strategies as st
 
+from backveer.profiles import earth, ekman
 from backveer.profiles import rotor as rotor_module
 from backveer.profiles.flags import BIT
 from backveer.profiles.humidity import dew_point_from_relative_humidity
@@ -397,7 +398,7 @@ def turning_wind(fit, z):
 
 
 def test_extrapolation_is_an_option_and_marked(monkeypatch):
-    monkeypatch.setattr("backveer.profiles.ekman.wind", turning_wind, raising=False)
+    monkeypatch.setattr("backveer.profiles.ekman.wind", turning_wind)
     z = GATES[:6]  # to 140 m, the tip at 194 m
     direction = 10.0 + 0.2 * z
     stack = stack_of(z, np.full((3, 6), 8.0), direction)
@@ -420,7 +421,7 @@ def test_extrapolation_is_an_option_and_marked(monkeypatch):
 
 def test_extrapolation_has_no_leap(monkeypatch):
     """Only the model's change with height counts, not its offset from the highest level."""
-    monkeypatch.setattr("backveer.profiles.ekman.wind", turning_wind, raising=False)
+    monkeypatch.setattr("backveer.profiles.ekman.wind", turning_wind)
     z = GATES[:6]
     fit = TurningFit(np.array(["well determined"], object))
     told = rotor(stack_of(z, 11.0, 38.0), TURBINE, extrapolate=True, fit=fit)
@@ -430,6 +431,33 @@ def test_extrapolation_has_no_leap(monkeypatch):
     assert told.shear_exponent_tips[0, 0] == pytest.approx(
         np.log(tip / 11.0) / np.log(194.0 / 44.0)
     )
+
+
+def test_extrapolation_with_a_real_fit():
+    """
+    A spiral with scale height 70 m, measured to 140 m, of which the rotor reaches 194 m.
+
+    u + i v = G (1 - exp(-(1 + i) z / delta)): Ekman (1905).
+    """
+
+    def spiral(z):
+        return 10.0 * (1.0 - np.exp(-(1.0 + 1j) * z / 70.0))
+
+    low, high = np.arange(10.0, 141.0, 10.0), np.arange(10.0, 301.0, 10.0)
+    short, long = (
+        Stack.of(
+            height=z, eastward_wind=spiral(z).real, northward_wind=spiral(z).imag, latitude=52.0
+        )
+        for z in (low, high)
+    )
+    fit = ekman.fit(short, earth.coriolis(short), error=np.full(1, 0.05))
+    assert fit.verdict[0] == "well determined"
+    told = rotor(short, TURBINE, extrapolate=True, fit=fit)
+    whole = rotor(long, TURBINE)
+    assert told.extrapolated[0, 0]
+    assert told.covered_top[0, 0] == 194.0
+    assert told.veer[0, 0] == pytest.approx(whole.veer[0, 0], abs=0.1)
+    assert told.equivalent_speed[0, 0] == pytest.approx(whole.equivalent_speed[0, 0], abs=0.01)
 
 
 # -- properties
