@@ -36,7 +36,7 @@ def read(files: tuple[str, ...], hints: Hints, as_json: bool, to: str | None) ->
 
         write_json(click.get_text_stream("stdout"), reading)
     else:
-        from backveer.io.words.text import reading_text
+        from backveer.io.words.understood import reading_text
 
         for file in reading.files:
             click.echo(reading_text(file))

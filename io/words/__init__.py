@@ -6,8 +6,11 @@ Modules
 record     the JSON
 findings   what the quality check found, as remarks
 units      what people read instead of SI
-text       the printed statement of one profile, and of how a file was read
+safe       text from a file, made safe to print
+page       sections, tables and wrapping at 80 columns
+text       the printed statement of one profile
 table      many profiles, a line each
+understood how a file was understood, in print
 sources    method, equation and publication of each number
 cautions   where it can hurt
 """

@@ -16,6 +16,10 @@ SAID = {
         "has a temperature outside limits",
         "have a temperature outside limits",
     ),
+    "humidity_outside_limits": (
+        "has a humidity outside limits",
+        "have a humidity outside limits",
+    ),
     "pressure_outside_limits": (
         "has a pressure outside limits",
         "have a pressure outside limits",
