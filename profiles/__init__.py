@@ -3,22 +3,20 @@ The science of vertical wind profiles: arrays in, arrays out, SI only.
 
 Kernels take plain float arrays whose last axis is level and broadcast over the rest; analysers
 take a :class:`~backveer.profiles.stack.Stack` and return a frozen dataclass of arrays. Nothing
-here opens a file, draws or prints.
+here opens a file, draws or prints. Each module's first line says what it is about:
 
-Modules
--------
-labels           what a variable is called, its unit and its meaning; hand-over to xarray, pandas
-flags            the findings that a level can carry
-stack            what a stack of profiles is
-grid             common heights, sums and integrals over levels
-earth            Coriolis parameter, gravity, geopotential
-air              moist air, hydrostatics, the standard atmosphere
-quality          what is wrong with a level
-wind_error       the standard error of a wind component
-turning          direction that unwraps
-ekman            the Ekman family, fitted
-thermal_wind     thermal wind and temperature advection
-geostrophic      evidence for the geostrophic wind, departure, momentum integral
-boundary_layer   depths, inversions, jets, Richardson number
-statement        runs the analysers over a stack
+- What a profile is: labels, flags, stack, grid
+- The earth and the air: earth, air, humidity, hydrostatics, level_pressure
+- What is wrong with a level, and how well the wind is known: quality, level_order, spikes,
+  air_checks, wind_error
+- How the wind turns: turning, direction
+- Friction: ekman, ekman_search, ekman_moments, ekman_errors, ekman_parameters, ekman_verdict,
+  surface_layer, drag_law
+- Distance from balance: geostrophic, balance, free_air, momentum_integral
+- Temperature advection: thermal_wind, friction_correction, layer_line
+- The boundary layer: boundary_layer, inversions, low_level_jet
+- All of it: statement
+- Wind energy: rotor, rotor_levels, rotor_reasons, swept_area, hub_air
+- Aviation: low_level_shear, flight_path, shear_criteria, shear_cause
+- Many profiles: climatology, classes, joint_table, block_bootstrap, events, interval_means
 """

@@ -1,8 +1,8 @@
 """
 Method, equation and publication of each number of the statement, for ``--sources``.
 
-Kept beside the words, in the order of the statement. The docstrings of ``backveer.profiles`` tell the
-same at length; what is cited here from memory is cited so there.
+Kept beside the words, in the order of the statement. The docstrings of ``backveer.profiles`` tell
+the same at length; what is cited here from memory is cited so there.
 """
 
 from __future__ import annotations
@@ -39,8 +39,8 @@ SOURCES = (
     Source(
         "turning",
         "direction followed through north as a continuous angle; error from the wind's error",
-        "direction = atan2(-u, -v); its error is the wind's over the speed, in light wind that of an "
-        "unknown direction",
+        "direction = atan2(-u, -v); its error is the wind's over the speed, in light wind that of "
+        "an unknown direction",
         "common practice, no source; the error is tested against simulated winds",
     ),
     Source(
@@ -61,8 +61,8 @@ SOURCES = (
     ),
     Source(
         "geostrophic wind, departure",
-        "given, from the fit, and from the free air brought down by its own shear; departure is wind "
-        "minus geostrophic wind",
+        "given, from the fit, and from the free air brought down by its own shear; departure is "
+        "wind minus geostrophic wind",
         "along and across G, across positive toward low pressure",
         "balance: Holton 2004, An Introduction to Dynamic Meteorology, ch. 3 and 5",
     ),
