@@ -1,8 +1,8 @@
 """
 Accepted spellings of units, and what they are in SI.
 
-A spelling counts only beside a kind of quantity: ``ms`` is a speed, and a time of none; ``F`` a
-temperature; ``m`` a length. Case is kept out of it, except where two units differ by nothing else.
+A spelling counts only beside a kind of quantity: ``ms`` is m/s where a speed is meant and
+milliseconds where a time is; ``C`` is a temperature and nothing else. Case tells nothing.
 """
 
 from __future__ import annotations
@@ -66,10 +66,11 @@ _TABLE: tuple[tuple[Unit, str], ...] = (
     (Unit("ft/min", "speed", FOOT / 60.0), "ft/min fpm ftmin-1 feetperminute"),
     (
         Unit("m", "length", 1.0),
-        "m meter meters metre metres metro metros mtr gpm mgpm m'",
+        "m meter meters metre metres metro metros mtr m'",
     ),
-    (Unit("km", "length", 1000.0), "km kilometer kilometers kilometre kilometres gpkm kgpm"),
-    (Unit("ft", "length", FOOT), "ft feet foot fuss fuß pieds pied pies pie gpft ft'"),
+    (Unit("gpm", "length", 1.0), "gpm mgpm geopotentialmeters geopotentialmetres"),
+    (Unit("km", "length", 1000.0), "km kilometer kilometers kilometre kilometres"),
+    (Unit("ft", "length", FOOT), "ft feet foot fuss fuß pieds pied pies pie ft'"),
     (Unit("hft", "length", 100.0 * FOOT), "hft 100ft hundredsfeet hundredsoffeet"),
     (Unit("kft", "length", 1000.0 * FOOT), "kft 1000ft"),
     (Unit("FL", "level", 100.0 * FOOT), "fl flightlevel flugflache flugfläche niveaudevol"),
@@ -110,7 +111,7 @@ _TABLE: tuple[tuple[Unit, str], ...] = (
      "secondes"),
     (Unit("min", "duration", 60.0), "min mins minute minutes minuten minutos"),
     (Unit("h", "duration", 3600.0), "h hr hrs hour hours std stunden heure heures hora horas"),
-    (Unit("ms", "duration", 1e-3), "millisecond milliseconds msec"),
+    (Unit("ms", "duration", 1e-3), "ms millisecond milliseconds msec"),
     (Unit("1", "one", 1.0), "1 - fraction unitless dimensionless none ratio 0-1 0..1"),
 )  # fmt: skip
 
@@ -171,10 +172,13 @@ def reference_of(text: str) -> str | None:
 
     Examples
     --------
-    >>> reference_of("m AGL"), reference_of("ft MSL"), reference_of("m")
-    ('ground', 'sea', None)
+    >>> reference_of("m AGL"), reference_of("ft MSL"), reference_of("m"), reference_of("gpm")
+    ('ground', 'sea', None, 'geopotential')
     """
-    return _without_reference(text)[1]
+    counted_from = _without_reference(text)[1]
+    if counted_from is None and any(unit.sign == "gpm" for unit in _candidates(text)):
+        return "geopotential"
+    return counted_from
 
 
 def parse(text: str, *kinds: str) -> Unit | None:
@@ -212,7 +216,7 @@ def kinds_of(text: str) -> frozenset[str]:
     Examples
     --------
     >>> sorted(kinds_of("ms")), sorted(kinds_of("hPa")), sorted(kinds_of("AGL"))
-    (['speed'], ['pressure'], [])
+    (['duration', 'speed'], ['pressure'], [])
     """
     return frozenset(unit.kind for unit in _candidates(text))
 
