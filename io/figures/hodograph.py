@@ -12,6 +12,7 @@ from backveer.io.figures.style import BLUE, FAINT, GREEN, INK, ORANGE, PALE, PUR
 from backveer.io.words.units import plainly
 from backveer.profiles import ekman
 from backveer.profiles.ekman import TOP
+from backveer.profiles.labels import Bools, Floats
 
 RINGS = (0.5, 1.0, 2.0, 5.0, 10.0, 20.0, 50.0, 100.0)
 LOOKS = {"given": ("*", VERMILION, 12), "fit": ("P", PURPLE, 8), "free air": ("^", GREEN, 8)}
@@ -60,12 +61,12 @@ def hodograph(ax: Axes, drawn: Drawn) -> None:
     ax.set_xlabel(f"toward east, {name}")
     ax.set_ylabel(f"toward north, {name}")
     reached = min(TOP, drawn.top * metre)
-    below = f"to {plainly(reached, drawn.units.height)} {drawn.units.height.name}"
+    below = f"wind vectors to {plainly(reached, drawn.units.height)} {drawn.units.height.name}"
     ax.text(0.0, 1.052, "Hodograph", transform=ax.transAxes, fontsize=10, fontweight="bold")
-    ax.text(0.0, 1.014, f"wind vectors {below} above ground", transform=ax.transAxes, fontsize=7.6)
     if not low.any():
         say(ax, "no level has a usable wind")
         return
+    ax.text(0.0, 1.014, f"{below} above ground", transform=ax.transAxes, fontsize=7.6)
     many = int(low.sum()) > 80
     frame.plot(
         u[low], v[low], color=INK, linewidth=1.0, marker="o",
@@ -90,8 +91,8 @@ def hodograph(ax: Axes, drawn: Drawn) -> None:
         if origin == found.chosen[0]:
             ax.annotate(
                 "", (wind.real, wind.imag), (0.0, 0.0), zorder=2,
-                arrowprops={"arrowstyle": "-", "color": colour, "lw": 1.2, "ls": (0, (7, 2, 1.5, 2)),
-                            "shrinkA": 0, "shrinkB": 0},
+                arrowprops={"arrowstyle": "-", "color": colour, "lw": 1.2, "shrinkA": 0,
+                            "shrinkB": 0, "ls": (0, (7, 2, 1.5, 2))},
             )  # fmt: skip
     ax.plot(0.0, 0.0, "+", color=INK, ms=8, mew=1.0)
     _heights(ax, drawn, low, u, v, side)
@@ -101,16 +102,16 @@ def hodograph(ax: Axes, drawn: Drawn) -> None:
     )  # fmt: skip
 
 
-def _heights(ax: Axes, drawn: Drawn, low: object, u: object, v: object, side: float) -> None:
+def _heights(ax: Axes, drawn: Drawn, low: Bools, u: Floats, v: Floats, side: float) -> None:
     """Name the height of some levels, as many as have room."""
     places = np.flatnonzero(low)
     z, metre = drawn.z[places] * drawn.units.height.size, drawn.units.height.size
-    centre = complex(u[places].mean(), v[places].mean())  # type: ignore[index]
+    centre = complex(u[places].mean(), v[places].mean())
     taken: list[complex] = []
     wanted = [goal for goal in NAMED_HEIGHTS if z[0] <= goal <= z[-1]]
     chosen = dict.fromkeys([0, len(z) - 1, *(int(np.argmin(np.abs(z - goal))) for goal in wanted)])
     for i in chosen:
-        point = complex(u[places[i]], v[places[i]])  # type: ignore[index]
+        point = complex(u[places[i]], v[places[i]])
         if any(abs(point - other) < 0.07 * side for other in taken):
             continue
         taken.append(point)

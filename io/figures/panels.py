@@ -3,6 +3,7 @@
 from __future__ import annotations
 
 import textwrap
+from collections.abc import Sequence
 
 import numpy as np
 from matplotlib.axes import Axes
@@ -12,7 +13,7 @@ from backveer.io.figures.profile_of import Drawn
 from backveer.io.figures.style import BLUE, FAINT, GREEN, INK, ORANGE, PALE, PURPLE, SKY, VERMILION
 from backveer.io.words.units import Unit, plainly, with_error
 from backveer.profiles import ekman
-from backveer.profiles.labels import Floats
+from backveer.profiles.labels import Bools, Floats
 
 DEGREE = Unit("deg", 1.0)
 #: Profiles that reach higher than this are drawn over the square root of height, which gives the
@@ -74,7 +75,8 @@ def speed(ax: Axes, drawn: Drawn) -> None:
             note = f"{fit.verdict[0]}: {fit.why[0]}"
     else:
         note = f"spiral not determined, because {fit.why[0] or 'no data'}"
-    _measured(ax, drawn, drawn.speed, "measured")
+    if drawn.usable.any():
+        _measured(ax, drawn, drawn.speed, "measured")
     if drawn.left_out.any():
         ax.plot(
             drawn.speed[drawn.left_out], drawn.z[drawn.left_out],
@@ -134,7 +136,10 @@ def direction(ax: Axes, drawn: Drawn) -> None:
         note = f"not determined, because {turned.why[0]}"
     _titled(ax, "Direction", below)
     _layers_of_turning(ax, drawn)
-    ax.set_xlabel("from, deg   |   turning by layer, deg")
+    ax.set_xlabel("from, deg", loc="left")
+    ax.text(
+        1.0, -0.052, "by layer, deg", transform=ax.transAxes, fontsize=8.5, ha="right", va="top"
+    )
     _beneath(ax, note)
 
 
@@ -168,7 +173,7 @@ def departure(ax: Axes, drawn: Drawn) -> None:
     ax.set_xlim(-reach, reach)
     ax.xaxis.set_major_locator(MaxNLocator(4, symmetric=True))
     ax.set_xlabel(drawn.units.speed.name)
-    _titled(ax, "Departure", f"from the wind by: {found.chosen[0]}")
+    _titled(ax, "Departure", f"wind minus geostrophic wind ({found.chosen[0]})")
     _beneath(ax, "")
 
 
@@ -180,12 +185,12 @@ def advection(ax: Axes, drawn: Drawn) -> None:
     value, error = layers.layer_advection[0] / size, layers.layer_error[0] / size
     there = np.isfinite(base) & np.isfinite(top)
     told = there & np.isfinite(value)
-    _titled(ax, "Advection", "of temperature, from the thermal wind")
+    _titled(ax, "Advection", "of temperature, by the thermal wind")
     if not told.any():
         ax.set_xticks([])
-        whys = [why for why in layers.layer_why[0] if why]
-        why = drawn.one.coriolis.why[0] or (whys[0] if whys else "no layer has wind and pressure")
-        say(ax, f"not determined, because {why}")
+        whys = list(dict.fromkeys(str(why) for why in layers.layer_why[0][there] if why))
+        why = drawn.one.coriolis.why[0] or "; ".join(whys[:2]) or "no layer has wind and pressure"
+        say(ax, f"no layer is determined, because {why}")
         return
     ax.axvline(0.0, color=FAINT, lw=0.9, zorder=1)
     looks = {"warm": (VERMILION, "////"), "cold": (SKY, "...."), "none": ("#bbbbbb", "")}
@@ -241,7 +246,9 @@ def say(ax: Axes, text: str) -> None:
     )  # fmt: skip
 
 
-def _measured(ax: Axes, drawn: Drawn, values: Floats, label: str, there: object = None) -> None:
+def _measured(
+    ax: Axes, drawn: Drawn, values: Floats, label: str, there: Bools | None = None
+) -> None:
     kept = drawn.usable if there is None else there
     many = int(np.sum(kept)) > 80
     ax.plot(
@@ -322,7 +329,7 @@ class _Compass(MaxNLocator):
         super().__init__(3, steps=[1, 1.5, 2, 3, 4.5, 6, 9, 10])
         self.low, self.high = low, high
 
-    def tick_values(self, vmin: float, vmax: float) -> Floats:
+    def tick_values(self, vmin: float, vmax: float) -> Sequence[float]:
         """Return the ticks."""
-        ticks: Floats = np.asarray(super().tick_values(self.low, self.high))
-        return ticks[(ticks >= self.low) & (ticks <= self.high)]
+        ticks = super().tick_values(self.low, self.high)
+        return [tick for tick in ticks if self.low <= tick <= self.high]

@@ -9,7 +9,6 @@ same bytes.
 from __future__ import annotations
 
 import os
-import textwrap
 import warnings
 
 import matplotlib.style
@@ -20,15 +19,15 @@ from backveer.io.atomic import replacing, suffix_among
 from backveer.io.figures import SUFFIXES, panels
 from backveer.io.figures.hodograph import hodograph
 from backveer.io.figures.profile_of import Drawn
-from backveer.io.figures.style import FAINT, METADATA, ORANGE, STYLE
+from backveer.io.figures.style import FAINT, METADATA, STYLE
 from backveer.io.words.cautions import GENERAL
-from backveer.io.words.page import name_of, place_of, time_of
+from backveer.io.words.page import cut, name_of, place_of, time_of
 from backveer.io.words.units import Unit, plainly, with_error
 from backveer.profiles.stack import wind_from_direction
 from backveer.profiles.statement import Statement
 
 SIZE = (13.6, 8.2)  # inches
-BOTTOM, HEIGHT = 0.285, 0.535
+BOTTOM, HEIGHT = 0.275, 0.57
 LEFT, WIDTH, GAP = 0.062, 0.139, 0.0165
 
 
@@ -88,7 +87,7 @@ def figure(said: Statement, index: int, *, units: str = "si") -> Figure:
 def _heading(sheet: Figure, drawn: Drawn) -> None:
     stack = drawn.one.stack
     when = "" if np.isnat(stack.time[0]) else f", {time_of(stack.time[0])}"
-    title = textwrap.shorten(name_of(stack, 0), 90, placeholder="...") + when
+    title = cut(name_of(stack, 0), 80) + when
     sheet.text(LEFT, 0.953, title, fontsize=14, fontweight="bold", parse_math=False)
     parts = [place_of(stack, 0)]
     f = drawn.one.coriolis.coriolis_parameter[0]
@@ -161,4 +160,4 @@ def _numbers(sheet: Figure, drawn: Drawn) -> None:
     if np.isfinite(layer.inversion_base[0]).any():
         marks.append("shaded: inversions")
     if marks:
-        sheet.text(left, top - len(rows) * step, "; ".join(marks), fontsize=7.6, color=ORANGE)
+        sheet.text(left, top - len(rows) * step, "; ".join(marks), fontsize=7.6)

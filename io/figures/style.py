@@ -1,9 +1,9 @@
 """
 The look of the pictures: colours, lines, and what keeps two runs alike to the byte.
 
-The colours are those of Okabe, M., and K. Ito, 2008: Color Universal Design (from memory), which the
-common kinds of colour blindness leave apart. Each has a line style, a marker or a hatch of its own
-beside it, so that nothing rests on colour.
+The colours are those of Okabe, M., and K. Ito, 2008: Color Universal Design (from memory), which
+the common kinds of colour blindness leave apart. Each has a line style, a marker or a hatch of its
+own beside it, so that nothing rests on colour.
 """
 
 from __future__ import annotations

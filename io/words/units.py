@@ -53,6 +53,7 @@ AVIATION = Units(
     shear=Unit("kt/100 ft", KNOT / (100.0 * FOOT)),
 )
 NAMED = {"si": SI, "aviation": AVIATION}
+EXACT = 1e-6  # of a value: an error under this is none
 
 
 def decimals(error: float) -> int:
@@ -81,15 +82,20 @@ def with_error(value: float, error: float, unit: Unit, sign: bool = False) -> st
     '10.0 ± 0.5'
     >>> with_error(25.04, 6.1, Unit("deg", 1.0), sign=True)
     '+25 ± 6'
+    >>> with_error(45.0, 1e-6, Unit("deg", 1.0))
+    '45.0'
     >>> with_error(float("nan"), 1.0, SI.speed)
     'not determined'
+
+    An error that is a rounding of the machine (the angle of a spiral without slip is 45 degrees by
+    its equation) is not written.
     """
     if not math.isfinite(value):
         return "not determined"
     shown = unit.of(value)
     plus = "+" if sign else ""
-    if not math.isfinite(error):
-        return f"{shown:{plus}.1f}"
+    if not math.isfinite(error) or error < EXACT * abs(value):
+        return f"{_unsigned_zero(shown, 1):{plus}.1f}"
     spread = error / unit.size
     places = decimals(spread)
     return f"{_unsigned_zero(shown, places):{plus}.{places}f} ± {spread:.{places}f}"
