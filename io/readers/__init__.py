@@ -3,12 +3,38 @@ From a file as the instrument wrote it to a stack of profiles.
 
 Modules
 -------
-errors     what can be wrong with an input
-files      paths, globs, compression: from a name to bytes
-table      what a text file says before anyone knows what its columns mean
-text       from bytes to a table
-units      accepted spellings of units, and what they are in SI
-spellings  accepted names of columns and metadata
-columns    from a table to profiles: what each column is, and why
-reading    what was read, and how it was understood
+door            the door: from names to checked profiles
+errors          what can be wrong with an input
+files           paths, globs, compression: from a name to bytes
+text            from bytes to tables
+table           what a text file says before anyone knows what its columns mean
+columns         from a table to profiles
+recognise       which column is what, and why (spellings.toml: the accepted names)
+units           accepted spellings of units, and what they are in SI
+settle          what the numbers settle where the names leave it open
+plausible       what each quantity can be, and which numbers stand for a missing one
+moments         dates and times as people write them
+place_and_time  where and when: metadata lines and what the user says
+levels          from columns in SI to the variables of a stack
+long_table      one row a level, one profile or many
+wide_table      one row a time, columns by height
+reading         what was read, and how it was understood
 """
+
+from __future__ import annotations
+
+from typing import TYPE_CHECKING, Any
+
+if TYPE_CHECKING:
+    from backveer.io.readers.door import read
+
+__all__ = ["read"]
+
+
+def __getattr__(name: str) -> Any:
+    """Load the readers when they are first asked for, so that the package stays light."""
+    if name == "read":
+        from backveer.io.readers.door import read
+
+        return read
+    raise AttributeError(f"module {__name__!r} has no attribute {name!r}")

@@ -180,7 +180,9 @@ def _time_of(
                 when[part] = got[part]
         when["zone"] = when["zone"] or got["zone"] or "utc" in words_of(key)
         if "local" in words_of(f"{key} {text}") and offset is None:
-            remarks.append(f'"{key}: {text}" is local time, its offset to UTC is not known: left out')
+            remarks.append(
+                f'"{key}: {text}" is local time, its offset to UTC is not known: left out'
+            )
             return {"day": NAN, "second": NAN, "zone": True}
     if not math.isnan(when["day"]) and not when["zone"]:
         if offset is None:

@@ -167,7 +167,9 @@ def _extremes(raw: NDArray[np.float64]) -> tuple[float, float]:
     return float(np.fmin.reduce(raw, axis=None)), float(np.fmax.reduce(raw, axis=None))
 
 
-def _stands_out(raw: NDArray[Any], code: float, limits: Limits, factor: float, offset: float) -> bool:
+def _stands_out(
+    raw: NDArray[Any], code: float, limits: Limits, factor: float, offset: float
+) -> bool:
     """Say whether a number that may be a code is impossible, or far from all others."""
     if not limits.low <= code * factor + offset <= limits.high:
         return True

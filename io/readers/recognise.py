@@ -546,7 +546,7 @@ def _as_said(
                     candidates[0],
                     quantity=None,
                     unit=None,
-                    why=f'another column is {_plain(quantity)} by --column',
+                    why=f"another column is {_plain(quantity)} by --column",
                 )
             ]
     return claims
@@ -560,9 +560,7 @@ def _components(claims: list[list[Claim]]) -> list[Claim]:
     both = bool(east) and bool(north)
     settled = []
     for place, candidates in enumerate(claims):
-        component = [
-            c for c in candidates if c.quantity in ("eastward_wind", "northward_wind")
-        ]
+        component = [c for c in candidates if c.quantity in ("eastward_wind", "northward_wind")]
         if component and len(candidates) > len(component):
             if both:
                 settled.append(component[0])
@@ -680,9 +678,7 @@ def _one_claim_each(claims: list[Claim], said: set[str]) -> list[Claim]:
             result.append(claim)
         elif claim.quantity in _MANY | _FIRST:
             result.append(
-                replace(
-                    claim, quantity=None, unit=None, why=f'"{before.name}" says this already'
-                )
+                replace(claim, quantity=None, unit=None, why=f'"{before.name}" says this already')
             )
         else:
             quantity = claim.quantity

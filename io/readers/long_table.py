@@ -1,0 +1,448 @@
+"""
+Long tables: one row a level, one profile or many.
+
+Many profiles are told apart by a launch number, a time or a station; otherwise by the height (or
+the pressure) starting again. Nothing here loops over rows or profiles.
+"""
+
+from __future__ import annotations
+
+from typing import Any
+
+import numpy as np
+from numpy.typing import NDArray
+
+from backveer.io.readers.cells import numbers
+from backveer.io.readers.errors import Contradiction, MissingColumn, TooFewLevels
+from backveer.io.readers.levels import (
+    EFFECT,
+    HEIGHTS,
+    VAGUE,
+    Array,
+    Draft,
+    Notes,
+    dew_point,
+    flight_level_pressure,
+    in_si,
+    row_coordinates,
+    row_times,
+    vertical,
+    wind,
+)
+from backveer.io.readers.place_and_time import Site
+from backveer.io.readers.plausible import LIMITS
+from backveer.io.readers.recognise import Claim
+from backveer.io.readers.settle import Columns
+from backveer.io.readers.table import Table
+
+Indices = NDArray[np.intp]
+
+_OF_LEVEL = (
+    "upward_air_velocity",
+    "wind_speed_deviation",
+    "availability",
+    "carrier_to_noise_ratio",
+)
+_OF_PROFILE = ("latitude", "longitude", "elevation", "wind_error")
+
+
+class _Rows:
+    """The columns of a table by quantity: raw, and in SI when asked for."""
+
+    def __init__(self, table: Table, claims: tuple[Claim, ...], notes: Notes) -> None:
+        self.notes = notes
+        self.by = {claim.quantity: claim for claim in claims if claim.quantity is not None}
+        raw: dict[str, Array] = {}
+        for quantity, claim in self.by.items():
+            if quantity not in LIMITS and quantity not in VAGUE:
+                continue
+            column = table.columns[claim.column]
+            if quantity in ("latitude", "longitude"):
+                column = row_coordinates(column, claim, table.header)
+            raw[quantity] = as_numbers(column, claim, table, notes)
+        self.columns = Columns(raw, self.by)
+        self.raw = raw
+        self.made: dict[str, Array] = {}
+
+    def has(self, quantity: str) -> bool:
+        return quantity in self.by
+
+    def __call__(self, quantity: str) -> Array:
+        """Return a column in SI, and say how its unit was settled."""
+        if quantity not in self.made:
+            claim = self.by[quantity]
+            settled = self.columns.unit(quantity)
+            if claim.unit is None:
+                self.notes.say(claim, quantity, settled.unit.sign, settled.why)
+            if settled.unit.kind == "level":
+                self.made[quantity] = flight_level_pressure(self.raw[quantity], settled.unit.factor)
+                return self.made[quantity]
+            limits = "altitude" if quantity in VAGUE else quantity
+            effect = EFFECT.get(quantity, "left out")
+            self.made[quantity] = in_si(
+                self.raw[quantity], limits, settled, claim, self.notes, effect
+            )
+        return self.made[quantity]
+
+
+def as_numbers(column: NDArray[Any], claim: Claim, table: Table, notes: Notes) -> Array:
+    """
+    Return a column as numbers; the few cells that are none are named.
+
+    Raises
+    ------
+    Contradiction
+        No cell is a number.
+    """
+    if column.dtype == np.float64:
+        return column
+    values, places = numbers(column, table.decimal)
+    if places.size:
+        first = int(places[0])
+        line, cell = int(table.lines[first]), column[first]
+        if not np.isfinite(values).any():
+            error = Contradiction(
+                f'column "{claim.name}" holds no numbers ("{cell}")',
+                "Correct the file, or name another column with --column",
+            )
+            error.line = line
+            raise error
+        cells = "1 cell is no number" if places.size == 1 else f"{places.size} cells are no numbers"
+        notes.remarks.append(f'column "{claim.name}": {cells} (line {line}: "{cell}"), left out')
+    return values
+
+
+def read_long(table: Table, claims: tuple[Claim, ...], site: Site) -> Draft:
+    """
+    Turn a long table into profiles.
+
+    Raises
+    ------
+    ReadError
+        Units that are not known, no wind, no height, a single level, nothing that tells profiles
+        apart.
+    """
+    notes = Notes(table, claims)
+    rows = _Rows(table, claims, notes)
+    flat: dict[str, Any] = wind(rows.has, rows, notes, rows.by)
+    if rows.has("air_temperature"):
+        flat["air_temperature"] = rows("air_temperature")
+    if rows.has("air_pressure"):
+        flat["air_pressure"] = rows("air_pressure")
+    moisture = dew_point(rows.has, rows, flat.get("air_pressure"), notes, rows.by)
+    if moisture is not None:
+        flat["dew_point_temperature"] = moisture
+    vague = _vague(rows, notes)
+    for name in (*HEIGHTS, *_OF_LEVEL):
+        if rows.has(name):
+            flat[name] = rows(name)
+    if vague is not None:
+        flat[""] = rows(vague)
+    if rows.has("elapsed_time"):
+        rows("elapsed_time")
+
+    kept = _not_empty(flat, notes)
+    times = row_times(table, rows.by, site, notes)
+    keys = {name: table.columns[rows.by[name].column] for name in ("launch", "station", "source")
+            if rows.has(name)}  # fmt: skip
+    axis = next((flat[name] for name in ("", *HEIGHTS) if name in flat), None)
+    if axis is None and "air_pressure" in flat:
+        axis = -flat["air_pressure"]
+    if rows.has("level_flag"):
+        flat["level_flag"] = _flags(rows, table, notes)
+    per_row = {name: rows(name) for name in _OF_PROFILE if rows.has(name)}
+    if kept is not None:
+        flat = {name: values[kept] for name, values in flat.items()}
+        per_row = {name: values[kept] for name, values in per_row.items()}
+        keys = {name: values[kept] for name, values in keys.items()}
+        times = None if times is None else times[kept]
+        axis = None if axis is None else axis[kept]
+    group, keyed = _groups(axis, times, keys, flat["eastward_wind"].size)
+    _told_apart(axis, group, keyed, notes)
+    place, first, shape = _places(axis, group)
+    levels = {
+        name: _scatter(values, place, shape)
+        for name, values in flat.items()
+        if name != "level_flag"
+    }
+    if "level_flag" in flat:
+        flags = np.zeros(shape, dtype=np.uint32)
+        flags[place] = flat["level_flag"]
+        levels["level_flag"] = flags
+    profile = _of_profiles(site, per_row, keys, times, group, first, place, shape)
+    z = levels.pop("", None)
+    vertical(levels, None if vague is None or z is None else (rows.by[vague], z), profile, notes)
+    if not (np.count_nonzero(np.isfinite(levels["height"]), axis=1) > 1).any():
+        raise TooFewLevels(
+            "a single level is no profile" if shape[1] < 2 or shape[0] == 1
+            else f"each of {shape[0]} profiles has a single level",
+            "Give a table with two or more levels"
+            if shape[0] == 1
+            else "Check which column tells profiles apart (--column launch=HEADER)",
+        )  # fmt: skip
+    notes.remarks += site.remarks
+    return Draft(levels, profile, notes.readings(), notes.remarks)
+
+
+def _vague(rows: _Rows, notes: Notes) -> str | None:
+    """Return the height whose reference is open, if another does not make it needless."""
+    open_ = [name for name in VAGUE if rows.has(name)]
+    clear = [name for name in HEIGHTS if rows.has(name)]
+    if len(open_) == 2 and not clear:
+        # Both are there: then the words mean what they are defined to mean.
+        for vague, name in zip(VAGUE, ("height", "altitude"), strict=True):
+            claim = rows.by.pop(vague)
+            why = f"{claim.why}; both are given, so the words hold"
+            rows.by[name] = claim
+            rows.raw[name] = rows.columns.raw[vague]  # type: ignore[index]
+            unit = None if claim.unit is None else claim.unit.sign
+            notes.say(claim, name, unit, why)
+        return None
+    if not open_:
+        return None
+    if clear:
+        for name in open_:
+            notes.unused(
+                rows.by[name],
+                f'does not say what it is counted from, "{rows.by[clear[0]].name}" does',
+            )
+            del rows.by[name]
+        return None
+    return open_[0]
+
+
+def _not_empty(flat: dict[str, Any], notes: Notes) -> NDArray[np.bool_] | None:
+    """Say which rows hold anything; None if all do."""
+    some = None
+    for values in flat.values():
+        there = np.isfinite(values)
+        if some is None and there.all():
+            return None
+        some = there if some is None else some | there
+        if some.all():
+            return None
+    if some is None or not some.any():
+        raise MissingColumn("no row holds a value", "Check the missing codes and the columns")
+    count = int(np.count_nonzero(~some))
+    notes.remarks.append("1 row holds no values" if count == 1 else f"{count} rows hold no values")
+    return some
+
+
+def _flags(rows: _Rows, table: Table, notes: Notes) -> Any:
+    """Findings of an earlier check, in a table that this program wrote."""
+    from backveer.profiles.flags import FLAGS
+
+    claim = rows.by["level_flag"]
+    column = table.columns[claim.column]
+    known = sum(flag.bit for flag in FLAGS)
+    ours = column.dtype == np.float64 and "eastward_wind (m s-1)" in table.header
+    if ours and ((column >= 0) & (column == np.floor(column)) & (column <= known)).all():
+        return column.astype(np.uint32) & np.uint32(known)
+    notes.unused(claim, "findings of another program")
+    return np.zeros(column.shape, dtype=np.uint32)
+
+
+def _codes(values: NDArray[Any]) -> tuple[Indices, int]:
+    """Number the different values in the order of their first appearance."""
+    if values.dtype == object:
+        number = {value: place for place, value in enumerate(dict.fromkeys(values.tolist()))}
+        return np.array([number[value] for value in values.tolist()], dtype=np.intp), len(number)
+    _, first, inverse = np.unique(values, return_index=True, return_inverse=True)
+    rank = np.empty(first.size, dtype=np.intp)
+    rank[np.argsort(first, kind="stable")] = np.arange(first.size)
+    return rank[inverse.reshape(-1)], int(first.size)
+
+
+def _groups(
+    axis: Array | None, times: NDArray[Any] | None, keys: dict[str, Any], count: int
+) -> tuple[Indices | None, bool]:
+    """Number the profile of each row; None where there is one. Say whether a key told them."""
+    group: Indices | None = None
+    keyed = False
+    for name in ("station", "source", "launch"):
+        if name in keys:
+            codes, several = _codes(keys[name])
+            if several > 1:
+                group = codes if group is None else _codes(group * several + codes)[0]
+                keyed = keyed or name == "launch"
+    if times is not None and not keyed:
+        codes, several = _codes(times)
+        if several > 1 and not _runs_on(axis, codes, group):
+            group = codes if group is None else _codes(group * several + codes)[0]
+            keyed = True
+    if not keyed and axis is not None:
+        starts = _restarts(axis)
+        if starts is not None:
+            part = np.cumsum(starts)
+            group = part if group is None else _codes(group * (int(part[-1]) + 1) + part)[0]
+    if group is not None and int(group.max(initial=0)) == 0:
+        group = None
+    return group, keyed
+
+
+def _runs_on(axis: Array | None, codes: Indices, group: Indices | None) -> bool:
+    """Say whether times change while the height goes on: each level then has its own time."""
+    if axis is None:
+        return False
+    change = codes[1:] != codes[:-1]
+    if group is not None:
+        change &= group[1:] == group[:-1]
+    with np.errstate(invalid="ignore"):
+        step = np.diff(axis)
+        steps = step[change & np.isfinite(step)]
+    if steps.size == 0:
+        return True
+    rising, falling = np.count_nonzero(steps > 0), np.count_nonzero(steps < 0)
+    # A new profile jumps against the sense of the levels within it.
+    within = step[~change & np.isfinite(step)]
+    if within.size > steps.size:
+        sense = np.sign(np.sum(np.sign(within)))
+        against = falling if sense > 0 else rising
+        return bool(against < 0.5 * steps.size and rising + falling > 0.5 * steps.size)
+    return bool(max(rising, falling) > 0.6 * steps.size)
+
+
+def _restarts(axis: Array) -> NDArray[np.bool_] | None:
+    """
+    Say at which rows the height begins again; None if it never does.
+
+    A profile begins where the height falls back into the lowest fifth of what was reached, and
+    stays there for the next level: a single bad height is no beginning.
+    """
+    finite = np.flatnonzero(np.isfinite(axis))
+    if finite.size < 4:
+        return None
+    s = axis[finite]
+    step = np.diff(s)
+    if (step >= 0).all() or (step <= 0).all():
+        return None
+    if np.count_nonzero(step < 0) > np.count_nonzero(step > 0):
+        s = -s
+        step = -step
+    low = float(s.min())
+    reached = s[:-1] - low
+    here = s[1:] - low
+    after = np.append(here[1:], here[-1])
+    back = (step < 0) & (here < 0.2 * reached) & (after < 0.5 * reached)
+    if not back.any():
+        return None
+    starts = np.zeros(axis.size, dtype=bool)
+    starts[finite[1:][back]] = True
+    return starts
+
+
+def _told_apart(axis: Array | None, group: Indices | None, keyed: bool, notes: Notes) -> None:
+    """Refuse rows that repeat one height again and again with nothing to tell them apart."""
+    if axis is None or axis.size < 6:
+        return
+    there = np.isfinite(axis)
+    if group is None:
+        step = np.diff(axis)
+        if (step > 0).all() or (step < 0).all():
+            return
+        different = np.unique(axis[there]).size
+    else:
+        _, codes = np.unique(axis[there], return_inverse=True)
+        different = np.unique(group[there] * (int(codes.max(initial=0)) + 1) + codes).size
+    if different < 0.5 * np.count_nonzero(there):
+        raise MissingColumn(
+            "heights repeat, and nothing tells profiles apart",
+            'Name what does with --column time="HEADER", launch="HEADER" or station="HEADER"; '
+            f"the columns are: {', '.join(notes.table.header)}",
+        )
+
+
+def _places(
+    axis: Array | None, group: Indices | None
+) -> tuple[tuple[Any, Any], Indices, tuple[int, int]]:
+    """Return the place (profile, level) of each row, lowest level first, and first rows."""
+    if group is None:
+        count = 0 if axis is None else axis.size
+        level = np.arange(count)
+        if axis is not None and _descends(axis):
+            level = level[::-1]
+        return (np.zeros(count, dtype=np.intp), level), np.zeros(1, dtype=np.intp), (1, count)
+    order = np.argsort(group, kind="stable")
+    sizes = np.bincount(group)
+    begin = np.concatenate([[0], np.cumsum(sizes)[:-1]])
+    level = np.empty(group.size, dtype=np.intp)
+    level[order] = np.arange(group.size) - np.repeat(begin, sizes)
+    if axis is not None:
+        s, g = axis[order], group[order]
+        with np.errstate(invalid="ignore"):
+            sign = np.where(g[1:] == g[:-1], np.sign(np.diff(s)), 0.0)
+        total = np.bincount(g[1:], weights=np.nan_to_num(sign), minlength=sizes.size)
+        down = total < 0
+        if down.any():
+            level = np.where(down[group], sizes[group] - 1 - level, level)
+    return (group, level), order[begin], (int(sizes.size), int(sizes.max()))
+
+
+def _descends(axis: Array) -> bool:
+    there = axis[np.isfinite(axis)]
+    return bool(there.size > 1 and np.sum(np.sign(np.diff(there))) < 0)
+
+
+def _scatter(values: Array, place: tuple[Any, Any], shape: tuple[int, int]) -> Array:
+    if shape[0] == 1 and (shape[1] < 2 or place[1][0] == 0):
+        return values.reshape(shape)
+    whole = np.full(shape, np.nan)
+    whole[place] = values
+    return whole
+
+
+def _of_profiles(
+    site: Site,
+    per_row: dict[str, Array],
+    keys: dict[str, Any],
+    times: NDArray[Any] | None,
+    group: Indices | None,
+    first: Indices,
+    place: tuple[Any, Any],
+    shape: tuple[int, int],
+) -> dict[str, Any]:
+    """Place, time and names of each profile; what the user says holds, then metadata."""
+    profile: dict[str, Any] = {}
+    several_stations = "station" in keys and group is not None
+    for name in _OF_PROFILE:
+        general = getattr(site, name, np.nan)
+        use_rows = name in per_row and name not in site.said
+        if use_rows and (general != general or several_stations):
+            lowest = _lowest_given(per_row[name], place, shape)
+            if name in ("latitude", "longitude") and name == "longitude":
+                lowest = np.where(lowest > 180.0, lowest - 360.0, lowest)
+            profile[name] = np.where(np.isfinite(lowest), lowest, general)
+        elif general == general or name in ("latitude", "longitude", "elevation"):
+            profile[name] = np.full(shape[0], general)
+    given = site.time
+    if times is not None and not ("time" in site.said or (shape[0] == 1 and not np.isnat(given))):
+        earliest = times[first]
+        if group is None:
+            there = times[~np.isnat(times)]
+            earliest = there[:1] if there.size == 0 else there.min(keepdims=True)
+        else:
+            order = np.argsort(group, kind="stable")
+            begin = np.concatenate([[0], np.cumsum(np.bincount(group))[:-1]])
+            earliest = np.fmin.reduceat(times[order], begin)
+        profile["time"] = earliest if earliest.size else given
+    else:
+        profile["time"] = np.full(shape[0], given)
+    for name in ("station", "source"):
+        if name in keys and not (name in site.said):
+            words = keys[name][first]
+            if words.dtype != object:
+                words = np.array([f"{word:g}" for word in words], dtype=object)
+            profile[name] = words
+        elif name == "station":
+            profile[name] = np.full(shape[0], site.station, dtype=object)
+    return profile
+
+
+def _lowest_given(values: Array, place: tuple[Any, Any], shape: tuple[int, int]) -> Array:
+    """Value of each profile at its lowest level that has one."""
+    grid = np.full(shape, np.nan)
+    grid[place] = values
+    finite = np.isfinite(grid)
+    at = np.argmax(finite, axis=1)
+    found: Array = grid[np.arange(shape[0]), at]
+    return found
