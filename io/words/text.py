@@ -8,30 +8,24 @@ functions return text; the command line prints it.
 
 from __future__ import annotations
 
-from collections.abc import Iterable
-
 import numpy as np
 
-from backveer.io.readers.reading import Reading
+from backveer.io.readers.reading import FileReading, Reading
 from backveer.io.words.cautions import GENERAL
 from backveer.io.words.findings import findings, level_findings
+from backveer.io.words.opening import file_of, heading, how_read, in_short, span
 from backveer.io.words.page import (
     bullet,
-    name_of,
     pairs_of,
-    place_of,
     section,
     table,
-    time_of,
     undetermined,
     wrapped,
 )
 from backveer.io.words.safe import safe
-from backveer.io.words.units import NAMED, Unit, Units, plainly, with_error
+from backveer.io.words.units import DEGREE, NAMED, Unit, Units, plainly, with_error
 from backveer.profiles.stack import wind_from_direction
 from backveer.profiles.statement import Statement
-
-DEGREE = Unit("deg", 1.0)
 
 
 def statement_text(
@@ -60,15 +54,16 @@ def statement_text(
     """
     one = said.select(index)
     shown = NAMED[units]
+    file, row = file_of(reading, index)
     parts = [
-        _heading(one, shown),
-        _in_short(one, shown),
+        "\n".join(part for part in (heading(one, shown), how_read(one, file)) if part),
+        in_short(one, shown),
         _turning(one, shown),
         _ekman(one, shown),
         _balance(one, shown),
         _advection(one, shown),
         _boundary_layer(one, shown),
-        _remarks(one, index, reading),
+        _remarks(one, row, file),
     ]
     if sources:
         from backveer.io.words.sources import sources_text
@@ -78,115 +73,47 @@ def statement_text(
     return "\n\n".join(part for part in parts if part)
 
 
-def _heading(one: Statement, units: Units) -> str:
-    stack = one.stack
-    when = "" if np.isnat(stack.time[0]) else f", {time_of(stack.time[0])}"
-    f = one.coriolis.coriolis_parameter[0]
-    lines = [f"{name_of(stack, 0)}{when}", place_of(stack, 0)]
-    if np.isfinite(f):
-        period = one.coriolis.inertial_period[0] / 3600.0
-        swing = f"inertial period {period:.1f} h" if np.isfinite(period) else "no inertial period"
-        lines[-1] += f"; f = {f:+.3e} s-1, {swing}"
-    usable = stack.usable("wind")[0]
-    z = stack.height[0][usable]
-    if z.size:
-        lines.append(
-            f"{z.size} levels with wind, {plainly(z[0], units.height)} to "
-            f"{plainly(z[-1], units.height)} {units.height.name} above ground; error of a wind "
-            f"component {plainly(one.wind_error[0], units.speed, 1)} {units.speed.name}"
-        )
-    return "\n".join(wrapped(line) for line in lines)
-
-
-def _in_short(one: Statement, units: Units) -> str:
-    """Say in plain sentences what a reader must know before any table."""
-    sentences = []
-    turned, stack = one.turning, one.stack
-    usable = np.flatnonzero(stack.usable("wind")[0])
-    if usable.size >= 2:
-        speed = stack.wind_speed[0]
-        low, high = speed[usable[0]], speed[usable[-1]]
-        strength = (
-            f"{plainly(low, units.speed, 1)} {units.speed.name} at the lowest level and "
-            f"{plainly(high, units.speed, 1)} {units.speed.name} at the highest"
-        )
-        if np.isfinite(turned.total[0]):
-            how = {"veering": "veers", "backing": "backs"}.get(turned.sense[0])
-            size = with_error(abs(turned.total[0]), turned.error[0], DEGREE)
-            span = _span(turned.base[0], turned.top[0], units)
-            if how:
-                sentences.append(
-                    f"From {span} the wind {how} by {size} deg; its speed is {strength}."
-                )
-            else:
-                total = with_error(turned.total[0], turned.error[0], DEGREE, sign=True)
-                sentences.append(
-                    f"From {span} the wind's turning, {total} deg, is smaller than its error; "
-                    f"its speed is {strength}."
-                )
-        else:
-            sentences.append(
-                f"The speed of the wind is {strength}; its total turning is not "
-                f"determined, because {turned.why[0]}."
-            )
-    fit = one.ekman
-    if fit.verdict[0] == "not determined":
-        sentences.append(f"Friction's part is not determined, because {fit.why[0]}.")
-    else:
-        angle = with_error(fit.cross_isobar_angle[0], fit.cross_isobar_angle_error[0], DEGREE)
-        sentences.append(
-            f"Friction turns the surface stress {angle} deg toward low pressure ({fit.verdict[0]})."
-        )
-    layers = one.thermal_wind
-    told = [
-        f"{sense} advection {_span(base, top, units)}"
-        for sense, base, top in zip(
-            layers.layer_sense[0], layers.layer_base_height[0], layers.layer_top_height[0],
-            strict=True,
-        )
-        if sense in ("warm", "cold")
-    ]  # fmt: skip
-    if told:
-        sentences.append(f"The turning shows {'; '.join(told[:3])}.")
-    return wrapped(" ".join(sentences))
+def _imposed(model: str) -> str:
+    """Without slip the angle is 45 degrees whatever the air does: it is no measurement."""
+    return ", the angle that no slip imposes" if model == "no slip" else ""
 
 
 def _turning(one: Statement, units: Units) -> str:
     turned = one.turning
     rows = []
     for i in range(turned.layer_base.shape[1]):
-        if not np.isfinite(turned.layer_base[0, i]):
+        base, top = turned.layer_base[0, i], turned.layer_top[0, i]
+        if not np.isfinite(base):
             continue
+        bounds = [plainly(base, units.height), plainly(top, units.height)]
+        change = turned.layer_speed_change[0, i]
+        stronger = [
+            plainly(change, units.speed, 1, True),
+            plainly(change / (top - base), units.strengthening, 1, True),
+        ]
         if turned.layer_why[0, i]:
-            note = turned.layer_why[0, i]
-            rows.append([*_bounds(turned, i, units), "not determined", "", "", note])
+            rows.append([*bounds, "not determined", "-", *stronger, turned.layer_why[0, i]])
             continue
         rows.append(
             [
-                *_bounds(turned, i, units),
+                *bounds,
                 with_error(turned.layer_turning[0, i], turned.layer_error[0, i], DEGREE, True),
                 plainly(turned.layer_rate[0, i], units.rate, 1, True),
-                plainly(turned.layer_speed_change[0, i], units.speed, 1, True),
+                *stronger,
                 turned.layer_sense[0, i],
             ]
         )
     if not rows:
         return section("Turning and strengthening", [undetermined(turned.why[0])])
+    height = units.height.name
     head = [
-        ["from", "to", "turning", "rate", "speed", ""],
-        [units.height.name, units.height.name, "deg", units.rate.name, units.speed.name, ""],
+        ["from", "to", "turning", "rate", "stronger", "rate", ""],
+        [height, height, "deg", units.rate.name, units.speed.name, units.strengthening.name, ""],
     ]
     return section(
         "Turning and strengthening with height (veering, clockwise, is positive)",
-        table(head, rows, "rrrrrl"),
+        table(head, rows, "rrrrrrl"),
     )
-
-
-def _bounds(turned: object, i: int, units: Units) -> list[str]:
-    return [
-        plainly(turned.layer_base[0, i], units.height),  # type: ignore[attr-defined]
-        plainly(turned.layer_top[0, i], units.height),  # type: ignore[attr-defined]
-    ]
 
 
 def _ekman(one: Statement, units: Units) -> str:
@@ -231,7 +158,8 @@ def _ekman(one: Statement, units: Units) -> str:
                         with_error(
                             fit.cross_isobar_angle[0], fit.cross_isobar_angle_error[0], DEGREE
                         )
-                        + " deg, surface stress toward low pressure",
+                        + " deg, surface stress toward low pressure"
+                        + _imposed(fit.model[0]),
                     ),
                     (
                         "misfit (rms)",
@@ -290,6 +218,11 @@ def _balance(one: Statement, units: Units) -> str:
         ]
         lines += ["", *table(head, departures, "rrr")]
         lines.append("  wind minus geostrophic wind; across: toward low pressure is positive")
+        if np.isfinite(found.departure_error[0]):
+            lines.append(
+                f"  standard error of either, near the ground: "
+                f"{plainly(found.departure_error[0], units.speed, 1)} {units.speed.name}"
+            )
     elif one.geostrophic.departure_why[0]:
         lines.append(undetermined(f"{one.geostrophic.departure_why[0]}", "departure"))
     if np.isfinite(found.friction_velocity[0]):
@@ -367,7 +300,7 @@ def _boundary_layer(one: Statement, units: Units) -> str:
     ):
         if np.isfinite(base):
             pairs.append(
-                ("inversion", f"{kind}, {_span(base, top, units)}, {strength:.1f} K warmer on top")
+                ("inversion", f"{kind}, {span(base, top, units)}, {strength:.1f} K warmer on top")
             )
     if np.isfinite(layer.jet_speed[0]):
         falloff = (
@@ -389,14 +322,8 @@ def _boundary_layer(one: Statement, units: Units) -> str:
     return section("Boundary layer", pairs_of(pairs))
 
 
-def _remarks(one: Statement, index: int, reading: Reading | None) -> str:
-    said: Iterable[str] = level_findings(one.stack)[0]
-    if reading is not None:
-        for file in reading.files:
-            if index < file.stack.profile_count:
-                said = findings(file)[index]
-                break
-            index -= file.stack.profile_count
+def _remarks(one: Statement, row: int, file: FileReading | None) -> str:
+    said = level_findings(one.stack)[0] if file is None else findings(file)[row]
     lines = [bullet(safe(remark, 400)) for remark in said]
     return section("Remarks", lines) if lines else ""
 
@@ -415,7 +342,3 @@ def _spread_out(places: np.ndarray, heights: np.ndarray, count: int) -> list[int
     z = np.sqrt(np.maximum(heights[places], 0.0))
     wanted = np.linspace(z[0], z[-1], count)
     return sorted({int(places[np.argmin(np.abs(z - goal))]) for goal in wanted})
-
-
-def _span(base: float, top: float, units: Units) -> str:
-    return f"{plainly(base, units.height)} to {plainly(top, units.height)} {units.height.name}"

@@ -34,6 +34,7 @@ class Units:
     height: Unit
     rate: Unit
     shear: Unit
+    strengthening: Unit
     pressure: Unit = Unit("hPa", 100.0)
     temperature: Unit = Unit("deg C", 1.0, 273.15)
     advection: Unit = Unit("K/h", 1.0 / 3600.0)
@@ -45,14 +46,17 @@ SI = Units(
     height=Unit("m", 1.0),
     rate=Unit("deg/100 m", 1.0),  # stored in deg per 100 m
     shear=Unit("m/s/30 m", 1.0 / 30.0),
+    strengthening=Unit("m/s/100 m", 0.01),
 )
 AVIATION = Units(
     speed=Unit("kt", KNOT),
     height=Unit("ft", FOOT),
     rate=Unit("deg/1000 ft", 100.0 / (1000.0 * FOOT)),
     shear=Unit("kt/100 ft", KNOT / (100.0 * FOOT)),
+    strengthening=Unit("kt/100 ft", KNOT / (100.0 * FOOT)),
 )
 NAMED = {"si": SI, "aviation": AVIATION}
+DEGREE = Unit("deg", 1.0)
 EXACT = 1e-6  # of a value: an error under this is none
 
 
