@@ -106,17 +106,21 @@ def _heights(ax: Axes, drawn: Drawn, low: Bools, u: Floats, v: Floats, side: flo
     """Name the height of some levels, as many as have room."""
     places = np.flatnonzero(low)
     z, metre = drawn.z[places] * drawn.units.height.size, drawn.units.height.size
-    centre = complex(u[places].mean(), v[places].mean())
+    path = u[places] + 1j * v[places]
+    reach = max(1, len(path) // 10)
     taken: list[complex] = []
     wanted = [goal for goal in NAMED_HEIGHTS if z[0] <= goal <= z[-1]]
     chosen = dict.fromkeys([0, len(z) - 1, *(int(np.argmin(np.abs(z - goal))) for goal in wanted)])
     for i in chosen:
-        point = complex(u[places[i]], v[places[i]])
+        point = complex(path[i])
         if any(abs(point - other) < 0.07 * side for other in taken):
             continue
         taken.append(point)
-        away = point - centre
-        away = away / abs(away) if abs(away) > 0 else 1.0
+        # Beside the path, on its outer side.
+        along = complex(path[min(i + reach, len(path) - 1)] - path[max(i - reach, 0)])
+        away = 1j * along / abs(along) if abs(along) > 0 else 1j
+        if (away.conjugate() * (point - complex(path.mean()))).real < 0:
+            away = -away
         ax.annotate(
             f"{z[i] / metre:.0f}", (point.real, point.imag),
             (11 * away.real, 11 * away.imag), textcoords="offset points", fontsize=7.2,

@@ -3,7 +3,6 @@
 from __future__ import annotations
 
 import textwrap
-from collections.abc import Sequence
 
 import numpy as np
 from matplotlib.axes import Axes
@@ -11,19 +10,20 @@ from matplotlib.ticker import FixedLocator, FuncFormatter, MaxNLocator, NullLoca
 
 from backveer.io.figures.profile_of import Drawn
 from backveer.io.figures.style import BLUE, FAINT, GREEN, INK, ORANGE, PALE, PURPLE, SKY, VERMILION
-from backveer.io.words.units import Unit, plainly, with_error
+from backveer.io.words.units import DEGREE, plainly, with_error
 from backveer.profiles import ekman
 from backveer.profiles.labels import Bools, Floats
 
-DEGREE = Unit("deg", 1.0)
 #: Profiles that reach higher than this are drawn over the square root of height, which gives the
 #: layer of friction the room that a linear axis would give to the free air. [m]
 LINEAR_TO = 1500.0
 TICKS = (0, 50, 100, 200, 300, 500, 1000, 1500, 2000, 3000, 4000, 6000, 8000, 10000, 12000, 15000,
          20000, 25000, 30000, 40000, 50000, 65000, 80000, 100000)  # fmt: skip
+COMPASS = (5.0, 10.0, 15.0, 30.0, 45.0, 90.0, 180.0)  # degrees
 CLOSEST_TICKS = 0.042  # of the axis
 DASHES = ((0, (5, 2)), (0, (1, 1.5)), (0, (6, 2, 1, 2)), (0, (3, 1)))
-LETTERS = 31  # of a note that fit beneath a panel
+LETTERS = 33  # of a note that fit beneath a panel
+DEEPEST = 0.42  # where the foot of the sheet begins, in heights of a panel beneath it
 
 
 def height_axis(ax: Axes, drawn: Drawn) -> None:
@@ -71,8 +71,6 @@ def speed(ax: Axes, drawn: Drawn) -> None:
             np.hypot(u, v)[0] / size, z / metre,
             color=BLUE, lw=2.0, label=f"fit: {fit.model[0]}", zorder=4,
         )  # fmt: skip
-        if fit.why[0]:
-            note = f"{fit.verdict[0]}: {fit.why[0]}"
     else:
         note = f"spiral not determined, because {fit.why[0] or 'no data'}"
     if drawn.usable.any():
@@ -114,7 +112,7 @@ def direction(ax: Axes, drawn: Drawn) -> None:
     left = middle - 0.6 * span
     # The right of the panel is kept for the turning of each layer.
     ax.set_xlim(left, left + 1.2 * span / 0.6)
-    ax.xaxis.set_major_locator(_Compass(left, left + 1.25 * span))
+    ax.xaxis.set_major_locator(FixedLocator(_compass(left, left + 1.25 * span)))
     ax.xaxis.set_major_formatter(FuncFormatter(lambda d, _: f"{d % 360.0:03.0f}"))
     _measured(ax, drawn, angle, "measured", there)
     if np.isfinite(turned.total[0]):
@@ -173,7 +171,7 @@ def departure(ax: Axes, drawn: Drawn) -> None:
     ax.set_xlim(-reach, reach)
     ax.xaxis.set_major_locator(MaxNLocator(4, symmetric=True))
     ax.set_xlabel(drawn.units.speed.name)
-    _titled(ax, "Departure", f"wind minus geostrophic wind ({found.chosen[0]})")
+    _titled(ax, "Departure", f"from the geostrophic wind: {found.chosen[0]}")
     _beneath(ax, "")
 
 
@@ -314,22 +312,17 @@ def _beneath(ax: Axes, note: str) -> None:
         )  # fmt: skip
     if note:
         lines = textwrap.wrap(note, LETTERS)
-        if len(lines) > 6:
-            lines = [*lines[:5], lines[5][: LETTERS - 3] + "..."]
+        start = 0.105 + 0.033 * len(handles)
+        room = int((DEEPEST - start) / 0.026)
+        if len(lines) > room:
+            lines = [*lines[: room - 1], lines[room - 1][: LETTERS - 3] + "..."]
         ax.text(
-            0.0, -0.105 - 0.033 * len(handles), "\n".join(lines), transform=ax.transAxes,
+            0.0, -start, "\n".join(lines), transform=ax.transAxes,
             fontsize=7.2, style="italic", va="top", parse_math=False,
         )  # fmt: skip
 
 
-class _Compass(MaxNLocator):
-    """Ticks at round directions, only where the curve runs and not under the layers' numbers."""
-
-    def __init__(self, low: float, high: float) -> None:
-        super().__init__(3, steps=[1, 1.5, 2, 3, 4.5, 6, 9, 10])
-        self.low, self.high = low, high
-
-    def tick_values(self, vmin: float, vmax: float) -> Sequence[float]:
-        """Return the ticks."""
-        ticks = super().tick_values(self.low, self.high)
-        return [tick for tick in ticks if self.low <= tick <= self.high]
+def _compass(low: float, high: float) -> list[float]:
+    """Round directions where the curve runs, three or four, none under the layers' numbers."""
+    step = next((step for step in COMPASS if (high - low) / step <= 3.5), 360.0)
+    return list(np.arange(np.ceil(low / step), high / step) * step)

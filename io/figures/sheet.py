@@ -9,6 +9,7 @@ same bytes.
 from __future__ import annotations
 
 import os
+import textwrap
 import warnings
 
 import matplotlib.style
@@ -22,7 +23,7 @@ from backveer.io.figures.profile_of import Drawn
 from backveer.io.figures.style import FAINT, METADATA, STYLE
 from backveer.io.words.cautions import GENERAL
 from backveer.io.words.page import cut, name_of, place_of, time_of
-from backveer.io.words.units import Unit, plainly, with_error
+from backveer.io.words.units import DEGREE, Unit, plainly, with_error
 from backveer.profiles.stack import wind_from_direction
 from backveer.profiles.statement import Statement
 
@@ -108,6 +109,7 @@ def _numbers(sheet: Figure, drawn: Drawn) -> None:
     metre, knot = units.height.name, units.speed.name
     rows = [("spiral", str(fit.verdict[0]))]
     if drawn.fitted:
+        rows += [("", line) for line in textwrap.wrap(str(fit.why[0]), 44)]
         u, v = fit.geostrophic_eastward_wind[0], fit.geostrophic_northward_wind[0]
         spread = float(
             np.hypot(
@@ -127,9 +129,7 @@ def _numbers(sheet: Figure, drawn: Drawn) -> None:
             ),
             (
                 "cross-isobar angle",
-                with_error(
-                    fit.cross_isobar_angle[0], fit.cross_isobar_angle_error[0], panels.DEGREE
-                )
+                with_error(fit.cross_isobar_angle[0], fit.cross_isobar_angle_error[0], DEGREE)
                 + "°",
             ),
         ]
@@ -150,7 +150,7 @@ def _numbers(sheet: Figure, drawn: Drawn) -> None:
                 f"{plainly(layer.jet_height[0], units.height)} {metre}",
             )
         )
-    left, top, step = 0.735, 0.218, 0.0235
+    left, top, step = 0.715, 0.224, 0.0213
     for n, (name, value) in enumerate(rows):
         sheet.text(left, top - n * step, name, fontsize=8.2, color="#555555")
         sheet.text(left + 0.095, top - n * step, value, fontsize=8.2, parse_math=False)
