@@ -9,6 +9,7 @@ from collections.abc import Callable
 from typing import TYPE_CHECKING, Any
 
 import click
+from click.core import ParameterSource
 
 if TYPE_CHECKING:
     from backveer.io.readers.reading import Hints, Reading
@@ -182,6 +183,24 @@ def numbers(text: str | None, option: str) -> tuple[float, ...] | None:
             f"{text!r} must hold two or more increasing numbers", param_hint=option
         )
     return values
+
+
+def options_given() -> str:
+    """Write the options of the running command that were given, as they would be written again."""
+    import shlex
+
+    context = click.get_current_context()
+    words = []
+    for parameter in context.command.params:
+        if not isinstance(parameter, click.Option) or parameter.name is None:
+            continue
+        if context.get_parameter_source(parameter.name) is not ParameterSource.COMMANDLINE:
+            continue
+        value = context.params.get(parameter.name)
+        for one in value if parameter.multiple and isinstance(value, tuple) else (value,):
+            words.append(parameter.opts[0])
+            words += [] if parameter.is_flag else [shlex.quote(str(one))]
+    return " ".join(words)
 
 
 def exit_status(reading: Reading) -> int:

@@ -8,6 +8,7 @@ from backveer.io.command.options import (
     exit_status,
     geostrophic_wind,
     numbers,
+    options_given,
     reading_options,
     units_option,
 )
@@ -18,6 +19,7 @@ from backveer.io.readers.reading import Hints
 @reading_options
 @click.option("--json", "as_json", is_flag=True, help="Print JSON, in SI units.")
 @click.option("--figure", type=click.Path(), metavar="OUT", help="Draw to OUT.svg, .pdf or .png.")
+@click.option("--report", type=click.Path(), metavar="OUT.html", help="Write a page to look at.")
 @click.option(
     "--profile",
     type=click.IntRange(min=1),
@@ -59,6 +61,7 @@ def turn(
     hints: Hints,
     as_json: bool,
     figure: str | None,
+    report: str | None,
     profile: int | None,
     units: str,
     sources: bool,
@@ -85,6 +88,10 @@ def turn(
         from backveer.io.figures import SUFFIXES
 
         suffix_among(figure, SUFFIXES)
+    if report is not None:
+        from backveer.io.atomic import suffix_among
+
+        suffix_among(report, (".html", ".htm"))
     reading = readers.read(files, hints)
     if not reading.files:
         return exit_status(reading)
@@ -122,4 +129,8 @@ def turn(
         from backveer.io.figures.sheet import draw
 
         draw(said, index, figure)
+    if report is not None:
+        from backveer.io.report.page import write_report
+
+        write_report(report, reading, said, units=units, options=options_given())
     return exit_status(reading)

@@ -4,9 +4,12 @@ from __future__ import annotations
 
 from collections.abc import Mapping
 from dataclasses import dataclass, field
+from typing import TYPE_CHECKING
 
 from backveer.io.readers.errors import ReadError
-from backveer.profiles.stack import Stack
+
+if TYPE_CHECKING:  # the command line asks for Hints before it needs numpy
+    from backveer.profiles.stack import Stack
 
 
 @dataclass(frozen=True)
@@ -63,12 +66,15 @@ class FileReading:
         Each column of the file.
     remarks
         What was left out, repaired or assumed, each a sentence without a full stop.
+    digest
+        SHA-256 of the input's bytes, in hexadecimal; empty where it was not kept.
     """
 
     source: str
     stack: Stack
     columns: tuple[ColumnReading, ...]
     remarks: tuple[str, ...]
+    digest: str = ""
 
 
 @dataclass(frozen=True, eq=False)
@@ -83,4 +89,6 @@ class Reading:
         """All profiles, file after file."""
         if len(self.files) == 1:
             return self.files[0].stack
+        from backveer.profiles.stack import Stack
+
         return Stack.concatenate(file.stack for file in self.files)

@@ -78,6 +78,13 @@ def _imposed(model: str) -> str:
     return ", the angle that no slip imposes" if model == "no slip" else ""
 
 
+def _angle(one: Statement) -> str:
+    angle = one.ekman.cross_isobar_angle[0]
+    if _imposed(one.ekman.model[0]):
+        return plainly(angle, DEGREE)
+    return with_error(angle, one.ekman.cross_isobar_angle_error[0], DEGREE)
+
+
 def _turning(one: Statement, units: Units) -> str:
     turned = one.turning
     rows = []
@@ -155,9 +162,7 @@ def _ekman(one: Statement, units: Units) -> str:
                     ),
                     (
                         "cross-isobar angle",
-                        with_error(
-                            fit.cross_isobar_angle[0], fit.cross_isobar_angle_error[0], DEGREE
-                        )
+                        _angle(one)
                         + " deg, surface stress toward low pressure"
                         + _imposed(fit.model[0]),
                     ),
