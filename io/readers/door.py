@@ -95,8 +95,8 @@ def _understood(tables: Sequence[Any], hints: Hints) -> list[Draft]:
             errors.append((int(table.lines[0]) if len(table.lines) else 0, error))
     if not drafts:
         raise errors[0][1]
-    for line, error in errors:
-        drafts[0].remarks.append(f"the table from line {line} on was left out: {error.problem}")
+    for line, reason in errors:
+        drafts[0].remarks.append(f"the table from line {line} on was left out: {reason.problem}")
     return drafts
 
 
@@ -145,7 +145,7 @@ def _joined(drafts: list[Draft]) -> Stack:
         missing: Any = {"time": np.datetime64("NaT", "ns"), "station": "", "source": ""}.get(
             name, np.nan
         )
-        kind = {"time": "datetime64[ns]", "station": object, "source": object}.get(name, float)
+        kind: Any = {"time": "datetime64[ns]", "station": object, "source": object}.get(name, float)
         column = np.full(rows, missing, dtype=kind)
         row = 0
         for draft in drafts:

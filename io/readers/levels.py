@@ -11,7 +11,6 @@ from numpy.typing import NDArray
 
 from backveer.io.readers.errors import Contradiction, MissingColumn
 from backveer.io.readers.moments import (
-    DAY,
     Moments,
     compact_clock,
     numbers_as_moments,
@@ -19,7 +18,6 @@ from backveer.io.readers.moments import (
 )
 from backveer.io.readers.place_and_time import (
     ASSUMED_UTC,
-    NAN,
     Site,
     as_times,
     cannot_place,
@@ -133,7 +131,7 @@ def in_si(
     done = clean(raw, quantity, settled.unit)
     if done.codes:
         what = "1 value is a code" if done.codes == 1 else f"{done.codes} values are codes"
-        notes.add(claim, f"{what} for missing")
+        notes.add(claim, f"{what} for missing" + (" (all heights)" if raw.ndim == 2 else ""))
     if done.impossible is not None:
         count = int(np.count_nonzero(done.impossible))
         rows = done.impossible.reshape(done.impossible.shape[0], -1).any(axis=1)
@@ -305,12 +303,17 @@ def vertical(
         levels["height"] = levels["altitude"] - base[..., np.newaxis]
         return
     if "air_pressure" not in levels:
-        raise MissingColumn(
-            "there is no height and no pressure",
-            'Name one with --column height="HEADER", altitude="HEADER" or air_pressure="HEADER"; '
-            f"the columns are: {', '.join(notes.table.header)}",
-        )
+        raise no_height(notes.table.header)
     _from_pressure(levels, profile, base, notes)
+
+
+def no_height(header: tuple[str, ...]) -> MissingColumn:
+    """Return the error for a table without height and pressure."""
+    return MissingColumn(
+        "there is no height and no pressure",
+        'Name one with --column height="HEADER", altitude="HEADER" or air_pressure="HEADER"; '
+        f"the columns are: {', '.join(header)}",
+    )
 
 
 def _from_pressure(
@@ -375,18 +378,13 @@ def flight_level_pressure(levels: Array, factor: float) -> Array:
     return pressure
 
 
-@dataclass(frozen=True, eq=False)
-class RowTimes:
-    """Times of the rows, NaT where missing; None where the columns give none."""
-
-    times: NDArray[Any] | None
-
-
 def row_times(
     table: Table, by: Mapping[str, Claim], site: Site, notes: Notes
-) -> NDArray[Any] | None:
+) -> tuple[NDArray[Any] | None, bool]:
     """
-    Return the time of each row from columns of time, date and clock; None where there is none.
+    Return the time of each row from columns of time, date and clock, None where there is none.
+
+    Also returned is whether the times are in UTC; local times only tell profiles apart.
 
     Raises
     ------
@@ -395,7 +393,7 @@ def row_times(
     """
     day: Array | None = None
     second: Array | None = None
-    zone = False
+    zone, in_utc = False, True
     order_offset: int | None = site.offset
     used: list[Claim] = []
     for name in ("time", "date", "clock"):
@@ -431,22 +429,22 @@ def row_times(
                 f'column "{claim.name}" is local time, its offset to UTC is not known: say it with '
                 f'--unit "{claim.name}=UTC+1"; no time is given'
             )
-            return None
+            in_utc = False
     if day is None:
         if second is None or not np.isfinite(site.day):
-            return None
+            return None, False
         day = np.full(second.shape, site.day)
         zone = zone or site.zone
     elif second is None and np.isfinite(site.second) and used and np.unique(day).size == 1:
         second, zone = np.full(day.shape, site.second), zone or site.zone
     moments = Moments(day, second, zone, None)
     times = as_times(moments)
-    if not zone and second is not None:
+    if not zone and second is not None and in_utc:
         if order_offset is None:
             notes.remarks.append(ASSUMED_UTC)
         else:
             times = times - np.timedelta64(order_offset * 60, "s")
-    return times
+    return times, in_utc
 
 
 def _moments(column: NDArray[Any], claim: Claim, name: str, order: str) -> Moments | None:

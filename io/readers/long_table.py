@@ -24,6 +24,7 @@ from backveer.io.readers.levels import (
     dew_point,
     flight_level_pressure,
     in_si,
+    no_height,
     row_coordinates,
     row_times,
     vertical,
@@ -142,11 +143,13 @@ def read_long(table: Table, claims: tuple[Claim, ...], site: Site) -> Draft:
         rows("elapsed_time")
 
     kept = _not_empty(flat, notes)
-    times = row_times(table, rows.by, site, notes)
+    times, in_utc = row_times(table, rows.by, site, notes)
     keys = {name: table.columns[rows.by[name].column] for name in ("launch", "station", "source")
             if rows.has(name)}  # fmt: skip
     axis = next((flat[name] for name in ("", *HEIGHTS) if name in flat), None)
-    if axis is None and "air_pressure" in flat:
+    if axis is None and "air_pressure" not in flat:
+        raise no_height(table.header)
+    if axis is None:
         axis = -flat["air_pressure"]
     if rows.has("level_flag"):
         flat["level_flag"] = _flags(rows, table, notes)
@@ -160,16 +163,21 @@ def read_long(table: Table, claims: tuple[Claim, ...], site: Site) -> Draft:
     group, keyed = _groups(axis, times, keys, flat["eastward_wind"].size)
     _told_apart(axis, group, keyed, notes)
     place, first, shape = _places(axis, group)
-    levels = {
+    levels: dict[str, Any] = {
         name: _scatter(values, place, shape)
         for name, values in flat.items()
         if name != "level_flag"
     }
     if "level_flag" in flat:
-        flags = np.zeros(shape, dtype=np.uint32)
+        flags: Any = np.zeros(shape, dtype=np.uint32)
         flags[place] = flat["level_flag"]
         levels["level_flag"] = flags
-    profile = _of_profiles(site, per_row, keys, times, group, first, place, shape)
+    if group is not None and not keyed and "station" not in keys:
+        by = "height" if any(name in flat for name in ("", *HEIGHTS)) else "pressure"
+        notes.remarks.append(f"profiles were told apart by the {by} starting again")
+    profile = _of_profiles(
+        site, per_row, keys, times if in_utc else None, group, first, place, shape
+    )
     z = levels.pop("", None)
     vertical(levels, None if vague is None or z is None else (rows.by[vague], z), profile, notes)
     if not (np.count_nonzero(np.isfinite(levels["height"]), axis=1) > 1).any():
@@ -194,13 +202,23 @@ def _vague(rows: _Rows, notes: Notes) -> str | None:
             claim = rows.by.pop(vague)
             why = f"{claim.why}; both are given, so the words hold"
             rows.by[name] = claim
-            rows.raw[name] = rows.columns.raw[vague]  # type: ignore[index]
+            rows.raw[name] = rows.columns.raw[vague]
             unit = None if claim.unit is None else claim.unit.sign
             notes.say(claim, name, unit, why)
         return None
     if not open_:
         return None
     if clear:
+        for name in list(open_):
+            of = "altitude" if name == "some_altitude" else "height"
+            if of not in clear and _apart(rows, name, clear[0], of):
+                claim = rows.by.pop(name)
+                rows.by[of], rows.raw[of] = claim, rows.raw[name]
+                rows.made[of] = rows.made[name]
+                unit = rows.columns.unit(name).unit.sign
+                beside = f'as it lies beside "{rows.by[clear[0]].name}"'
+                notes.say(claim, of, unit, f"{claim.why}; {of} {beside}")
+                open_.remove(name)
         for name in open_:
             notes.unused(
                 rows.by[name],
@@ -211,9 +229,20 @@ def _vague(rows: _Rows, notes: Notes) -> str | None:
     return open_[0]
 
 
+def _apart(rows: _Rows, vague: str, clear: str, of: str) -> bool:
+    """Say whether an open height lies on its own side of one that is clear."""
+    with np.errstate(invalid="ignore"):
+        above = rows(vague) - rows(clear)
+    above = above[np.isfinite(above)]
+    if above.size == 0:
+        return False
+    offset = float(np.median(above))
+    return offset > 1.0 if of == "altitude" else offset < -1.0
+
+
 def _not_empty(flat: dict[str, Any], notes: Notes) -> NDArray[np.bool_] | None:
     """Say which rows hold anything; None if all do."""
-    some = None
+    some: Any = None
     for values in flat.values():
         there = np.isfinite(values)
         if some is None and there.all():
@@ -225,11 +254,12 @@ def _not_empty(flat: dict[str, Any], notes: Notes) -> NDArray[np.bool_] | None:
         raise MissingColumn("no row holds a value", "Check the missing codes and the columns")
     count = int(np.count_nonzero(~some))
     notes.remarks.append("1 row holds no values" if count == 1 else f"{count} rows hold no values")
-    return some
+    kept: NDArray[np.bool_] = some
+    return kept
 
 
 def _flags(rows: _Rows, table: Table, notes: Notes) -> Any:
-    """Findings of an earlier check, in a table that this program wrote."""
+    """Return the findings of an earlier check, in a table that this program wrote."""
     from backveer.profiles.flags import FLAGS
 
     claim = rows.by["level_flag"]
@@ -243,7 +273,7 @@ def _flags(rows: _Rows, table: Table, notes: Notes) -> Any:
 
 
 def _codes(values: NDArray[Any]) -> tuple[Indices, int]:
-    """Number the different values in the order of their first appearance."""
+    """Return a number for each different value, in the order of first appearance."""
     if values.dtype == object:
         number = {value: place for place, value in enumerate(dict.fromkeys(values.tolist()))}
         return np.array([number[value] for value in values.tolist()], dtype=np.intp), len(number)
@@ -256,7 +286,7 @@ def _codes(values: NDArray[Any]) -> tuple[Indices, int]:
 def _groups(
     axis: Array | None, times: NDArray[Any] | None, keys: dict[str, Any], count: int
 ) -> tuple[Indices | None, bool]:
-    """Number the profile of each row; None where there is one. Say whether a key told them."""
+    """Return the profile of each row, None where there is one, and whether a key told them."""
     group: Indices | None = None
     keyed = False
     for name in ("station", "source", "launch"):
@@ -273,7 +303,7 @@ def _groups(
     if not keyed and axis is not None:
         starts = _restarts(axis)
         if starts is not None:
-            part = np.cumsum(starts)
+            part: Indices = np.cumsum(starts).astype(np.intp)
             group = part if group is None else _codes(group * (int(part[-1]) + 1) + part)[0]
     if group is not None and int(group.max(initial=0)) == 0:
         group = None
@@ -428,7 +458,7 @@ def _of_profiles(
     else:
         profile["time"] = np.full(shape[0], given)
     for name in ("station", "source"):
-        if name in keys and not (name in site.said):
+        if name in keys and name not in site.said:
             words = keys[name][first]
             if words.dtype != object:
                 words = np.array([f"{word:g}" for word in words], dtype=object)

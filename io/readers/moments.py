@@ -21,7 +21,8 @@ _MONTHS = {
     word: number
     for number, words in enumerate(
         (
-            "jan january januar janvier janv enero ene", "feb february februar fevrier fevr febrero",
+            "jan january januar janvier janv enero ene",
+            "feb february februar fevrier fevr febrero",
             "mar march marz mrz mars marzo", "apr april avril avr abril abr", "may mai mayo",
             "jun june juni juin junio", "jul july juli juillet juil julio",
             "aug august aout agosto ago", "sep sept september septembre septiembre",
@@ -303,9 +304,9 @@ def _same_layout(cells: list[str], order: str, name: str, remedy: str) -> Moment
         day = _days(y, m, d)
     h = number("H", "Hc", "Hz")
     if h is not None:
-        minute, s = number("M", "Mc"), number("S", "Sc")
-        minute = np.zeros_like(h) if minute is None else minute
-        s = np.zeros_like(h) if s is None else s
+        found_minute, found_second = number("M", "Mc"), number("S", "Sc")
+        minute = np.zeros_like(h) if found_minute is None else found_minute
+        s = np.zeros_like(h) if found_second is None else found_second
         good = (h < 24) | ((h == 24) & (minute == 0) & (s == 0))
         good &= (minute < 60) & (s < 61)
         second = np.where(good, 3600.0 * h + 60.0 * minute + s, np.nan)

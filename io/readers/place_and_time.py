@@ -71,7 +71,7 @@ def moment(day: float, second: float) -> np.datetime64:
     if math.isnan(day):
         return np.datetime64("NaT", "ns")
     seconds = day * DAY + (0.0 if math.isnan(second) else second)
-    return np.datetime64(round(seconds * 1000), "ms").astype("datetime64[ns]")
+    return np.datetime64(round(seconds * 1000) * 1_000_000, "ns")
 
 
 def site(metadata: tuple[tuple[str, str], ...], header: tuple[str, ...], hints: Hints) -> Site:
@@ -103,7 +103,7 @@ def _site(
         if quantity is not None and value.strip() and quantity not in found:
             found[quantity] = (key, value)
     spoken = languages((*(key for key, _ in metadata if key), *header))
-    latitude, longitude, elevation, station, time = said
+    latitude, longitude, elevation, named, time = said
     remarks: list[str] = []
     place: dict[str, Any] = {}
     if "position" in found:
@@ -120,7 +120,7 @@ def _site(
     elif "elevation" in found:
         place["elevation"], remark = _elevation(*found["elevation"])
         remarks += [remark] if remark else []
-    place["station"] = station or (found["station"][1] if "station" in found else "")
+    place["station"] = named or (found["station"][1] if "station" in found else "")
     if "heights" in found:
         text = found["heights"][1]
         unit = re.search(r"\b(?:in|en)\s+([^\W\d_]+)|[\[(]([^\])]+)[\])]", text)
@@ -138,8 +138,8 @@ def _site(
         place["zone"] = True
     else:
         place.update(_time_of(found, remarks, place.get("offset")))
-    given = {name: value for name, value in zip(_HINTED, said, strict=True) if value is not None}
-    return Site(**place, remarks=tuple(remarks), said=frozenset(given))
+    given = frozenset(_HINTED[i] for i, value in enumerate(said) if value is not None)
+    return Site(**place, remarks=tuple(remarks), said=given)
 
 
 _HINTED = ("latitude", "longitude", "elevation", "station", "time")

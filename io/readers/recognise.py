@@ -266,12 +266,12 @@ def recognise(
         Name and units row disagree, or two columns claim the same.
     """
     rows = units if units else ("",) * len(header)
-    claims = [
+    candidates = [
         _claim(place, name, row, words)
         for place, (name, row, words) in enumerate(zip(header, rows, of_words, strict=True))
     ]
-    claims = _as_said(claims, header, rows, said_columns)
-    claims = _components(claims)
+    candidates = _as_said(candidates, header, rows, said_columns)
+    claims = _components(candidates)
     claims = _wide_or_not(claims)
     claims = _units_as_said(claims, said_units, said_columns)
     return tuple(_one_claim_each(claims, {quantity for quantity, _ in said_columns}))

@@ -126,7 +126,7 @@ def _temperature(columns: Columns, quantity: str) -> Settled | None:
     if bottom > 150.0 and top < 345.0:
         return Settled(_given("K", "temperature"), f"unit by magnitude (smallest {bottom:g})")
     if bottom < -100.0 or top > 60.0:  # colder or warmer than air is in degrees C
-        if -170.0 < bottom and top < 140.0:
+        if bottom > -170.0 and top < 140.0:
             extreme = bottom if bottom < -100.0 else top
             return Settled(_given("degF", "temperature"), f"unit by magnitude ({extreme:g})")
         return None

@@ -163,7 +163,7 @@ def _heights(claims: tuple[Claim, ...], site: Site, notes: Notes) -> tuple[Array
             names = " and ".join(f'"{claim.name}"' for claim in winds[:2])
             raise MissingColumn(
                 f"the numbers in the names of {names} may count sensors rather than metres",
-                "If they are heights, say --unit height=m; otherwise write the heights into the names",
+                "If they are heights, say --unit height=m; otherwise rename the columns",
             )
         notes.remarks.append(
             "the numbers in the names of the columns were taken as heights above ground in m"
@@ -185,8 +185,8 @@ def _of_rows(
 ) -> dict[str, Any]:
     """Place, time and station of each row."""
     profile: dict[str, Any] = {}
-    times = row_times(table, single, site, notes)
-    if times is not None and "time" not in site.said:
+    times, in_utc = row_times(table, single, site, notes)
+    if times is not None and in_utc and "time" not in site.said:
         profile["time"] = times
     else:
         profile["time"] = np.full(count, site.time)
