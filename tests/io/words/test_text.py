@@ -8,7 +8,6 @@ import numpy as np
 import pytest
 
 from backveer.io.readers.reading import ColumnReading, FileReading, Reading
-from backveer.io.words.table import summary_text
 from backveer.io.words.text import statement_text
 from backveer.io.words.understood import reading_text
 from backveer.io.words.units import AVIATION, SI, Unit, decimals, plainly, with_error
@@ -114,20 +113,6 @@ def test_remarks_of_the_file_and_of_the_levels_are_told():
     text = statement_text(statement(stack), 0, reading=Reading((file,), ()))
     assert "  - time taken as UTC" in text
     assert "  - 1 of 120 levels has no wind" in text
-
-
-def test_many_profiles_are_a_line_each():
-    stack = Stack.concatenate([sounding(), sounding(latitude=-55.0), sounding(latitude=1.0)])
-    said = statement(stack)
-    text = summary_text(said)
-    lines = text.splitlines()
-    assert max(len(line) for line in lines) <= 80
-    assert lines[2].split()[:2] == ["1", "2031-05-14"]
-    assert "3 profiles" in text
-    assert "2 well, 1 not determined" in text
-    assert "1 times: the site lies within 5 degrees of the equator" in text
-    short = summary_text(said, longest=2)
-    assert "(a line for each of the 3 profiles" in short
 
 
 def test_how_a_file_was_understood():
