@@ -2,18 +2,19 @@
 
 from __future__ import annotations
 
-from typing import TYPE_CHECKING, Any
+from typing import TYPE_CHECKING
 
 if TYPE_CHECKING:
     from backveer.io.readers.door import read
+else:
+
+    def __getattr__(name):
+        """Load the readers when they are first asked for, so that the package stays light."""
+        if name == "read":
+            from backveer.io.readers.door import read
+
+            return read
+        raise AttributeError(f"module {__name__!r} has no attribute {name!r}")
+
 
 __all__ = ["read"]
-
-
-def __getattr__(name: str) -> Any:
-    """Load the readers when they are first asked for, so that the package stays light."""
-    if name == "read":
-        from backveer.io.readers.door import read
-
-        return read
-    raise AttributeError(f"module {__name__!r} has no attribute {name!r}")

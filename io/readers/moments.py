@@ -297,10 +297,10 @@ def _same_layout(cells: list[str], order: str, name: str, remedy: str) -> Moment
             if len(match["yy"]) == 2:
                 y = np.where(y < 70, 2000, 1900) + y
         else:
-            found = number("m", "mc"), number("d", "dc")
-            if found[0] is None or found[1] is None:
+            found_month, found_day = number("m", "mc"), number("d", "dc")
+            if found_month is None or found_day is None:
                 return None
-            m, d = found
+            m, d = found_month, found_day
         day = _days(y, m, d)
     h = number("H", "Hc", "Hz")
     if h is not None:

@@ -108,9 +108,9 @@ def _site(
     place: dict[str, Any] = {}
     if "position" in found:
         _position(found["position"], spoken, found, place)
-    for name, value in (("latitude", latitude), ("longitude", longitude)):
-        if value is not None:
-            place[name] = _within(name, float(value), f"--{name}")
+    for name, degrees in (("latitude", latitude), ("longitude", longitude)):
+        if degrees is not None:
+            place[name] = _within(name, degrees, f"--{name}")
         elif name in found:
             place[name] = coordinate(*found[name], name, spoken)
             if math.isnan(place[name]):
