@@ -9,13 +9,17 @@ files           paths, globs, compression: from a name to bytes
 text            from bytes to tables
 table           what a text file says before anyone knows what its columns mean
 columns         from a table to profiles
-recognise       which column is what, and why (spellings.toml: the accepted names)
+spellings       accepted names (spellings.toml), and how a name is looked up
+names           what one column can be, from its name and unit
+recognise       which column is what, and why
 units           accepted spellings of units, and what they are in SI
 settle          what the numbers settle where the names leave it open
 plausible       what each quantity can be, and which numbers stand for a missing one
 moments         dates and times as people write them
 place_and_time  where and when: metadata lines and what the user says
 levels          from columns in SI to the variables of a stack
+row_places      time and place of each row
+profiles_apart  which rows are one profile
 long_table      one row a level, one profile or many
 wide_table      one row a time, columns by height
 reading         what was read, and how it was understood

@@ -13,7 +13,7 @@ import numpy as np
 from backveer.io.readers.errors import Contradiction, MissingColumn
 from backveer.io.readers.moments import DAY, Moments, offset_of, read_moments
 from backveer.io.readers.reading import Hints
-from backveer.io.readers.recognise import languages, metadata_key, words_of
+from backveer.io.readers.spellings import languages, metadata_key, words_of
 from backveer.io.readers.units import Unit, kinds_of, parse, reference_of
 
 NAN = float("nan")

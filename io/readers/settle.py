@@ -14,8 +14,8 @@ import numpy as np
 from numpy.typing import NDArray
 
 from backveer.io.readers.errors import Contradiction, UnknownUnit
+from backveer.io.readers.names import KINDS, Claim
 from backveer.io.readers.plausible import without_codes
-from backveer.io.readers.recognise import KINDS, Claim
 from backveer.io.readers.units import Unit, parse, spellings_of
 from backveer.profiles.air import GAS_CONSTANT, standard_height
 from backveer.profiles.earth import STANDARD_GRAVITY

@@ -15,14 +15,13 @@ from backveer.io.readers.levels import (
     Notes,
     dew_point,
     in_si,
-    row_coordinates,
-    row_times,
     vertical,
     wind,
 )
 from backveer.io.readers.long_table import as_numbers
+from backveer.io.readers.names import BY_HEIGHT, Claim
 from backveer.io.readers.place_and_time import Site
-from backveer.io.readers.recognise import BY_HEIGHT, Claim
+from backveer.io.readers.row_places import row_coordinates, row_times
 from backveer.io.readers.settle import Columns
 from backveer.io.readers.table import Table
 from backveer.io.readers.units import Unit, parse
