@@ -8,7 +8,7 @@ import numpy as np
 
 from backveer.io.readers.reading import FileReading
 from backveer.io.words.findings import level_findings
-from backveer.io.words.page import WIDTH, bullet, cut, name_of, place_of, time_of, wrapped
+from backveer.io.words.page import WIDTH, bullet, cut, place_of, time_of, wrapped
 from backveer.io.words.safe import safe
 from backveer.profiles.stack import Stack
 
@@ -24,7 +24,7 @@ def reading_text(file: FileReading) -> str:
             (
                 safe(column.column, 30),
                 column.read_as or "not used",
-                column.unit or "",
+                safe(column.unit or "", 12),
                 safe(column.why),
             )
         )
@@ -53,15 +53,15 @@ def reading_text(file: FileReading) -> str:
 def _described(stack: Stack, levels: np.ndarray) -> str:
     if stack.profile_count == 0:
         return "no profile"
-    if stack.profile_count == 1:
-        return f"{name_of(stack, 0)}: {place_of(stack, 0)}; {levels[0]} levels"
+    name = safe(str(stack.station[0]))
+    where = f"{name}: {place_of(stack, 0)}" if name else place_of(stack, 0)
     times = stack.time[~np.isnat(stack.time)]
-    span = ""
-    if times.size:
-        span = f", {time_of(times.min())} to {time_of(times.max())}"
+    if stack.profile_count == 1:
+        when = f", {time_of(times[0])}" if times.size else ""
+        return wrapped(f"{where}{when}; {levels[0]} levels")
+    span = f", {time_of(times.min())} to {time_of(times.max())}" if times.size else ""
     few, many = int(levels.min()), int(levels.max())
     each = f"{few}" if few == many else f"{few} to {many}"
-    return wrapped(
-        f"{name_of(stack, 0)}: {place_of(stack, 0)}; {stack.profile_count} profiles{span}, of "
-        f"{each} levels"
-    )
+    more = len(set(stack.station.tolist())) - 1
+    others = f" and {more} more" * bool(more)
+    return wrapped(f"{where}{others}; {stack.profile_count} profiles{span}, of {each} levels")

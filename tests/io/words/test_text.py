@@ -141,3 +141,14 @@ def test_how_a_file_was_understood():
 def test_rounding_follows_the_error(value, error, expected):
     assert with_error(value, error, Unit("", 1.0)) == expected
     assert decimals(0.0) == 1
+
+
+def test_a_file_without_a_station_is_named_once_and_every_line_fits():
+    stack = sounding(station=[""], source=["folder/" + "x" * 60 + ".csv"])
+    text = reading_text(FileReading("folder/a.csv", stack, (), ()))
+    assert text.splitlines()[0] == "folder/a.csv"
+    assert text.splitlines()[1].startswith("55.00 N, 3.05 W, 20 m above sea level, 2031-05-14")
+    two = Stack.concatenate([stack, sounding(station=["Other"])])
+    text = reading_text(FileReading("a.csv", two, (), ()))
+    assert "and 1 more; 2 profiles, 2031-05-14 23:15 UTC to" in " ".join(text.split())
+    assert max(len(line) for line in text.splitlines()) <= 80
