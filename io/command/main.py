@@ -15,6 +15,7 @@ from collections.abc import Sequence
 import click
 
 from backveer.io.atomic import WriteError
+from backveer.io.command.desk import desk
 from backveer.io.command.read import read
 from backveer.io.command.turn import turn
 
@@ -31,7 +32,7 @@ def backveer() -> None:
     """
 
 
-for command in (read, turn):
+for command in (read, turn, desk):
     backveer.add_command(command)
 
 

@@ -11,7 +11,7 @@ import numpy as np
 
 from backveer.io.readers.columns import understand
 from backveer.io.readers.errors import ReadError
-from backveer.io.readers.files import open_inputs
+from backveer.io.readers.files import Input, open_inputs, unfold
 from backveer.io.readers.levels import Draft
 from backveer.io.readers.reading import ColumnReading, FileReading, Hints, Reading
 from backveer.io.readers.text import read_tables
@@ -48,12 +48,31 @@ def read(paths: Names, hints: Hints | None = None) -> Reading:
     no_such_file.csv: no such file. Check the name and the folder.
     """
     names = [paths] if isinstance(paths, str | os.PathLike) else list(paths)
-    said = hints or Hints()
+    return _read(open_inputs([os.fspath(name) for name in names]), hints or Hints())
+
+
+def read_bytes(name: str, data: bytes, hints: Hints | None = None) -> Reading:
+    """
+    Read the bytes of one file, compressed or not, that is no file of this machine.
+
+    Parameters
+    ----------
+    name
+        What people call it; no file of that name is looked for.
+    data
+        Its content.
+    hints
+        What the user says to fill or override what it lacks.
+    """
+    return _read(unfold(name, data), hints or Hints())
+
+
+def _read(inputs: Iterable[Input | ReadError], said: Hints) -> Reading:
     failures: list[ReadError] = []
     files: list[FileReading] = []
     waiting: list[tuple[str, list[Draft]]] = []
     size = 0
-    for source, outcome in _drafts([os.fspath(name) for name in names], said):
+    for source, outcome in _drafts(inputs, said):
         if isinstance(outcome, ReadError):
             failures.append(outcome)
             continue
@@ -67,10 +86,12 @@ def read(paths: Names, hints: Hints | None = None) -> Reading:
     return Reading(tuple(files), tuple(failures))
 
 
-def _drafts(names: list[str], hints: Hints) -> Iterator[tuple[str, list[Draft] | ReadError]]:
+def _drafts(
+    inputs: Iterable[Input | ReadError], hints: Hints
+) -> Iterator[tuple[str, list[Draft] | ReadError]]:
     """Give each input's profiles, not yet checked, or what is wrong with it."""
     nameless = bool(hints.columns)
-    for opened in open_inputs(names):
+    for opened in inputs:
         if isinstance(opened, ReadError):
             yield opened.source or "", opened
             continue

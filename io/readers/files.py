@@ -143,7 +143,7 @@ def _from_path(name: str, ceiling: int) -> Iterator[Input | ReadError]:
     except (OSError, ValueError, MemoryError) as error:
         yield _not_opened(name, error)
     else:
-        yield from _unfold(name, data, ceiling)
+        yield from unfold(name, data, ceiling)
 
 
 def _from_stdin(stdin: IO[bytes] | None, ceiling: int) -> Iterator[Input | ReadError]:
@@ -159,7 +159,7 @@ def _from_stdin(stdin: IO[bytes] | None, ceiling: int) -> Iterator[Input | ReadE
     except (OSError, ValueError) as error:
         yield NotFound(f"cannot be read ({error})", "Send the data through a pipe", name)
     else:
-        yield from _unfold(name, data, ceiling)
+        yield from unfold(name, data, ceiling)
 
 
 def _not_opened(name: str, error: Exception) -> ReadError:
@@ -186,7 +186,9 @@ def _not_opened(name: str, error: Exception) -> ReadError:
     return NotFound(f"cannot be opened ({reason})", "Check the name and the folder", name)
 
 
-def _unfold(name: str, data: bytes, ceiling: int) -> Iterator[Input | ReadError]:
+def unfold(
+    name: str, data: bytes, ceiling: int = DECOMPRESSED_CEILING
+) -> Iterator[Input | ReadError]:
     """Give the inputs in the bytes of one file, decompressed."""
     if data.startswith(_ZIP_MAGIC):
         yield from _members(name, data, ceiling)

@@ -1,0 +1,12 @@
+"""
+The local web page: drop a file, see how it was read, correct it, and see the answer follow.
+
+Served on this machine only. Everything from the page is data: a file's bytes, words for columns and
+units, numbers; never a path.
+
+Modules
+-------
+session   what a browser has open: uploads in a private place, their hints and answers
+answer    from an upload and what was said about it to what the page shows
+server    the routes, and who may ask
+"""
