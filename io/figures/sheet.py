@@ -130,7 +130,8 @@ def _numbers(sheet: Figure, drawn: Drawn) -> None:
             (
                 "cross-isobar angle",
                 with_error(fit.cross_isobar_angle[0], fit.cross_isobar_angle_error[0], DEGREE)
-                + "°",
+                + "°"
+                + ", imposed by no slip" * (fit.model[0] == "no slip"),
             ),
         ]
     found = drawn.one.geostrophic

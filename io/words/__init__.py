@@ -8,6 +8,7 @@ findings   what the quality check found, as remarks
 units      what people read instead of SI
 safe       text from a file, made safe to print
 page       sections, tables and wrapping at 80 columns
+opening    how a statement begins: heading, how it was read, the findings in short
 text       the printed statement of one profile
 table      many profiles, a line each
 understood how a file was understood, in print
