@@ -15,12 +15,14 @@ headwind that falls along the path takes airspeed away: a loss.
 from __future__ import annotations
 
 from dataclasses import dataclass
+from typing import Any
 
 import numpy as np
 
 from backveer.profiles.grid import at_height, compact
 from backveer.profiles.labels import Floats, Labelled, Words, variable
-from backveer.profiles.low_level_shear import TOP
+from backveer.profiles.low_level_shear import STEP, TOP
+from backveer.profiles.sliding_layer import layer_differences
 from backveer.profiles.stack import Stack
 
 STANDARD_GRAVITY = 9.80665  # m s-2, ISO 2533:1975
@@ -34,8 +36,8 @@ class FlightPath(Labelled):
     """
     Headwind and crosswind by runway, and the change of headwind on an approach and a departure.
 
-    Rates and F are those of the segment between two neighbouring levels where the change of
-    headwind per height is largest in size.
+    Rates and F are those of the layer as deep as ``step``, wherever it lies, over which the
+    headwind changes most; between neighbouring levels where the levels span less than that.
     """
 
     runway: Floats = variable("degree", "runway", "true heading along which the aircraft moves")
@@ -51,8 +53,8 @@ class FlightPath(Labelled):
     approach_worst_rate: Floats = variable(
         "s-1", "profile runway", "largest change of headwind per metre of descent, gain positive"
     )
-    approach_worst_base: Floats = variable("m", "profile runway", "base of that segment")
-    approach_worst_top: Floats = variable("m", "profile runway", "top of that segment")
+    approach_worst_base: Floats = variable("m", "profile runway", "base of that layer")
+    approach_worst_top: Floats = variable("m", "profile runway", "top of that layer")
     approach_worst_per_second: Floats = variable(
         "m s-2", "profile runway", "the same per second at the ground speed, gain positive"
     )
@@ -77,11 +79,14 @@ class FlightPath(Labelled):
     largest_gain: Floats = variable(
         "m s-1", "profile runway", "largest rise of headwind between two heights of an approach"
     )
+    path_base: Floats = variable("m", "profile", "lowest height of the path: the lowest wind")
+    path_top: Floats = variable("m", "profile", "highest: ``top``, or the highest wind below it")
     why: Words = variable("", "profile", "why nothing is said of the profile")
     ground_speed: float = GROUND_SPEED
     glide_slope: float = GLIDE_SLOPE
     climb_slope: float = CLIMB_SLOPE
     top: float = TOP
+    step: float = STEP
 
 
 def headwind(u: Floats, v: Floats, heading: Floats) -> Floats:
@@ -131,6 +136,7 @@ def flight_path(
     ground_speed: float = GROUND_SPEED,
     glide_slope: float = GLIDE_SLOPE,
     climb_slope: float = CLIMB_SLOPE,
+    step: float = STEP,
 ) -> FlightPath:
     r"""
     Wind along straight paths through each profile, from ``top`` down to its lowest level and up.
@@ -149,6 +155,9 @@ def flight_path(
         Of the approach. [degree]
     climb_slope
         Of the departure, height over distance. [per cent]
+    step
+        Depth of the layer over which the largest rate is looked for: thinner ones show the noise of
+        the measurement, and an aircraft passes them in a second or two. [m]
 
     Returns
     -------
@@ -174,46 +183,36 @@ def flight_path(
         raise ValueError("ground speed, glide slope and climb slope must be positive")
     headings = np.atleast_1d(np.asarray(headings, dtype=float))
     usable = stack.usable("wind")
-    z = np.where(usable, stack.height, np.nan)[:, np.newaxis, :]
-    u = np.where(usable, stack.eastward_wind, np.nan)[:, np.newaxis, :]
-    v = np.where(usable, stack.northward_wind, np.nan)[:, np.newaxis, :]
-    along = headings[:, np.newaxis]
-    head, cross = headwind(u, v, along), crosswind(u, v, along)
+    z = np.where(usable, stack.height, np.nan)
+    u = np.where(usable, stack.eastward_wind, np.nan)
+    v = np.where(usable, stack.northward_wind, np.nan)
 
-    z = np.broadcast_to(z, head.shape)
-    cut = at_height(z, head, [top])
-    below = np.isfinite(head) & (np.where(np.isfinite(z), z, np.inf) < top)
-    count, z_path, path = compact(
+    wind: Any = u + 1j * v
+    cut: Any = at_height(z, wind, [top])
+    with np.errstate(invalid="ignore"):
+        below = usable & (z < top)
+    count, z_path, w = compact(
         np.concatenate([below, np.isfinite(cut)], axis=-1),
-        np.concatenate([z, np.full_like(cut, top)], axis=-1),
-        np.concatenate([head, cut], axis=-1),
+        np.concatenate([z, np.full_like(cut.real, top)], axis=-1),
+        np.concatenate([wind, cut], axis=-1),
     )
-    enough = count >= 2
-    with np.errstate(invalid="ignore", divide="ignore", over="ignore"):
-        gradient = np.diff(path, axis=-1) / np.diff(z_path, axis=-1)
-    if gradient.shape[-1] == 0:
-        gradient = np.full((*path.shape[:-1], 1), np.nan)
-        z_path = np.concatenate([z_path, np.full_like(z_path, np.nan)], axis=-1)
-    steepest = np.argmax(np.where(np.isfinite(gradient), np.abs(gradient), -1.0), axis=-1)
-    steepest = steepest[..., np.newaxis]
-    worst = np.where(enough, np.take_along_axis(gradient, steepest, -1)[..., 0], np.nan)
-    end = np.maximum(count - 1, 0)[..., np.newaxis]
-    rise = np.where(enough, np.take_along_axis(path, end, -1)[..., 0] - path[..., 0], np.nan)
+    enough = (count >= 2)[:, np.newaxis]
+    path = _along(w, headings)
+    worst, worst_base, worst_top = _steepest(z_path, w, headings, step)
+    last = np.maximum(count - 1, 0)[:, np.newaxis]
+    end = np.take_along_axis(path, last[..., np.newaxis], -1)[..., 0]
+    rise = np.where(enough, end - path[..., 0], np.nan)
     sink = ground_speed * np.tan(np.radians(glide_slope))
     climb = ground_speed * climb_slope / 100.0
     loss, gain = _largest_changes(path)
     return FlightPath(
         runway=headings,
-        headwind=head,
-        crosswind=cross,
+        headwind=headwind(u[:, np.newaxis], v[:, np.newaxis], headings[:, np.newaxis]),
+        crosswind=crosswind(u[:, np.newaxis], v[:, np.newaxis], headings[:, np.newaxis]),
         approach_change=-rise,
         approach_worst_rate=-worst,
-        approach_worst_base=np.where(
-            enough, np.take_along_axis(z_path, steepest, -1)[..., 0], np.nan
-        ),
-        approach_worst_top=np.where(
-            enough, np.take_along_axis(z_path, steepest + 1, -1)[..., 0], np.nan
-        ),
+        approach_worst_base=worst_base,
+        approach_worst_top=worst_top,
         approach_worst_per_second=-worst * sink,
         approach_f_factor=worst * sink / STANDARD_GRAVITY,
         departure_change=rise,
@@ -222,8 +221,10 @@ def flight_path(
         departure_f_factor=-worst * climb / STANDARD_GRAVITY,
         largest_loss=np.where(enough, loss, np.nan),
         largest_gain=np.where(enough, gain, np.nan),
+        path_base=np.where(enough[:, 0], z_path[:, 0], np.nan),
+        path_top=np.where(enough[:, 0], np.take_along_axis(z_path, last, -1)[:, 0], np.nan),
         why=np.where(
-            enough[..., 0] if headings.size else True,
+            enough[:, 0],
             "",
             f"there are fewer than two usable winds up to {top:.0f} m above ground",
         ).astype(object),
@@ -231,7 +232,35 @@ def flight_path(
         glide_slope=float(glide_slope),
         climb_slope=float(climb_slope),
         top=float(top),
+        step=float(step),
     )
+
+
+def _along(w: Any, headings: Floats) -> Floats:
+    """Headwind of winds (profile, level) along each heading: (profile, runway, level)."""
+    return headwind(w.real[:, np.newaxis], w.imag[:, np.newaxis], headings[:, np.newaxis])
+
+
+def _steepest(z: Floats, w: Any, headings: Floats, step: float) -> tuple[Floats, Floats, Floats]:
+    """Largest change of headwind per metre of height, with its layer, each (profile, runway)."""
+    rate, base, top = (np.full((z.shape[0], headings.size), np.nan) for _ in range(3))
+    for depth in (step, 0.0):
+        low, high, difference = layer_differences(z, w, depth)
+        if low.shape[-1] == 0:
+            continue
+        with np.errstate(invalid="ignore", divide="ignore", over="ignore"):
+            rates = _along(difference / (high - low), headings)
+        size = np.where(np.isfinite(rates), np.abs(rates), -1.0)
+        largest = np.max(size, axis=-1, keepdims=True)
+        # The lowest of layers that are equal to rounding.
+        places = np.where(size >= largest * (1 - 1e-9), low[:, np.newaxis], np.inf)
+        chosen = np.argmin(places, axis=-1)[..., np.newaxis]
+        # Where the levels span less than a step their own pairs must do.
+        use = (largest[..., 0] >= 0) & ~np.isfinite(rate)
+        rate[use] = np.take_along_axis(rates, chosen, -1)[..., 0][use]
+        base[use] = np.take_along_axis(low, chosen[..., 0], -1)[use]
+        top[use] = np.take_along_axis(high, chosen[..., 0], -1)[use]
+    return rate, base, top
 
 
 def _largest_changes(path: Floats) -> tuple[Floats, Floats]:

@@ -18,6 +18,7 @@ import numpy as np
 
 from backveer.profiles.grid import at_height, compact
 from backveer.profiles.labels import Bools, Floats, Labelled, Words, variable
+from backveer.profiles.sliding_layer import measured_between, strongest_layer
 from backveer.profiles.stack import Stack, wind_from_direction
 
 FOOT = 0.3048  # m, exact: ISO 80000-3:2019, annex B
@@ -33,6 +34,7 @@ STEP = 100 * FOOT
 FROM_SURFACE = (500 * FOOT, 1000 * FOOT, 1600 * FOOT, 2000 * FOOT)
 #: The surface wind is the wind at 10 m (WMO-No. 8); a lowest level above this is none.
 SURFACE_LIMIT = 30.0  # m, common practice, no source
+LOWEST_REACH = FROM_SURFACE[0]
 
 #: Terms of intensity and the shear, in kt per 100 ft, from which each holds. Wording after the
 #: Fifth Air Navigation Conference (1967), as told of ICAO Doc 9817 and Circular 186: light 0-4,
@@ -88,7 +90,21 @@ class LowLevelShear(Labelled):
     reach_direction_change: Floats = variable("degree", "profile reach", "veering positive")
     reach_shear: Floats = variable("s-1", "profile reach", "vector shear from the surface")
     reach_error: Floats = variable("s-1", "profile reach", "standard error of the shear")
+    window_shear: Floats = variable(
+        "s-1", "profile", "strongest vector shear over a layer as deep as the step, wherever it is"
+    )
+    window_base: Floats = variable("m", "profile", "base of that layer")
+    window_top: Floats = variable("m", "profile", "top of that layer")
+    window_vector_difference: Floats = variable("m s-1", "profile", "size of the difference there")
+    window_speed_difference: Floats = variable("m s-1", "profile", "speed there, top minus base")
+    window_direction_change: Floats = variable("degree", "profile", "there, veering positive")
+    window_error: Floats = variable("s-1", "profile", "standard error of that shear")
+    window_intensity: Words = variable("", "profile", "its term of intensity, empty for none")
+    window_lower_bound: Bools = variable("1", "profile", "levels are farther apart than the step")
+    window_measured_base: Floats = variable("m", "profile", "level below it, used for its base")
+    window_measured_top: Floats = variable("m", "profile", "level above it, used for its top")
     maximum_shear: Floats = variable("s-1", "profile", "strongest shear between two levels")
+    maximum_error: Floats = variable("s-1", "profile", "standard error of that shear")
     maximum_base: Floats = variable("m", "profile", "base of the layer of the strongest shear")
     maximum_top: Floats = variable("m", "profile", "top of the layer of the strongest shear")
     maximum_intensity: Words = variable("", "profile", "its term of intensity, empty for none")
@@ -130,9 +146,13 @@ def low_level_shear(
     Notes
     -----
     The layer that reaches across ``top`` is cut there, the wind taken between its levels. The
-    error of a vector difference is that of one component, error times the square root of 2. For a
-    cut or a step the interpolation averages two levels and would make it smaller; the larger one is
-    kept, because the levels around a step share their error.
+    error of a vector difference is that of one component, error times the square root of 2. A layer
+    that lies between two neighbouring levels has their shear and its error; for one that holds a
+    level the error of its ends is kept at that of a level, though interpolation makes it smaller.
+
+    Between levels a few metres apart the strongest shear is mostly noise, and the terms of
+    intensity are for 100 ft: the shear to go by is ``window_shear``. Where the levels span less
+    than a step it is not determined.
     """
     usable = stack.usable("wind")
     z = np.where(usable, stack.height, np.nan)
@@ -165,9 +185,14 @@ def low_level_shear(
     with np.errstate(invalid="ignore"):
         bases = np.where((lowest > bases) & (lowest < edges[1:]), lowest, bases)
     tops = np.broadcast_to(edges[1:], bases.shape)
-    fixed = _difference(bases, tops, at_height(z, w, bases), at_height(z, w, tops), error)
+    fixed = _difference(bases, tops, at_height(z, w, bases), at_height(z, w, tops), error, z_pair)
     missing = ~np.isfinite(fixed.shear)
-    coarse = _coarsest(z_pair, bases, tops) > step * (1 + 1e-9)
+    coarse = measured_between(z_pair, bases, tops)[2] > step * (1 + 1e-9)
+
+    low, high = (end[..., np.newaxis] for end in strongest_layer(z_pair, w_pair, step)[:2])
+    window = _difference(low, high, at_height(z, w, low), at_height(z, w, high), error, z_pair)
+    under, over, widest, _ = measured_between(z_pair, low, high)
+    seen = np.isfinite(window.shear[..., 0])
 
     surface = np.where(lowest[..., 0] <= SURFACE_LIMIT, lowest[..., 0], np.nan)
     heights = np.array([height for height in reaches if height <= top * (1 + 1e-9)])
@@ -220,6 +245,18 @@ def low_level_shear(
         reach_direction_change=reach.turn,
         reach_shear=reach.shear,
         reach_error=reach.error,
+        window_shear=window.shear[..., 0],
+        window_base=np.where(seen, window.base[..., 0], np.nan),
+        window_top=np.where(seen, window.top[..., 0], np.nan),
+        window_vector_difference=window.size[..., 0],
+        window_speed_difference=window.speed[..., 0],
+        window_direction_change=window.turn[..., 0],
+        window_error=window.error[..., 0],
+        window_intensity=window.intensity[..., 0],
+        window_lower_bound=seen & (widest[..., 0] > step * (1 + 1e-9)),
+        window_measured_base=np.where(seen, under[..., 0], np.nan),
+        window_measured_top=np.where(seen, over[..., 0], np.nan),
+        maximum_error=of_strongest(pair.error, np.nan),
         maximum_shear=np.where(found, np.take_along_axis(shear, strongest, -1)[..., 0], np.nan),
         maximum_base=of_strongest(pair.base, np.nan),
         maximum_top=of_strongest(pair.top, np.nan),
@@ -275,8 +312,19 @@ class _Difference:
 
 
 def _difference(
-    base: Floats, top: Floats, w_base: Floats, w_top: Floats, error: Floats
+    base: Floats,
+    top: Floats,
+    w_base: Floats,
+    w_top: Floats,
+    error: Floats,
+    levels: Floats | None = None,
 ) -> _Difference:
+    """Differences over layers; ``levels`` where the ends were interpolated between them."""
+    with np.errstate(invalid="ignore", over="ignore"):
+        known = top - base
+        if levels is not None:
+            below, above, _, inside = measured_between(levels, base, top)
+            known = np.where(inside, known, np.fmax(known, above - below))
     with np.errstate(invalid="ignore", divide="ignore", over="ignore"):
         depth = top - base
         size = np.abs(w_top - w_base)
@@ -286,7 +334,7 @@ def _difference(
             - wind_from_direction(w_base.real, w_base.imag)
             + 180.0
         ) % 360.0 - 180.0
-        spread = np.where(np.isfinite(shear), np.sqrt(2.0) * error[..., np.newaxis] / depth, np.nan)
+        spread = np.where(np.isfinite(shear), np.sqrt(2.0) * error[..., np.newaxis] / known, np.nan)
         speed = np.abs(w_top) - np.abs(w_base)
     return _Difference(base, top, shear, size, speed, turn, spread, intensity(shear, spread))
 
@@ -297,21 +345,11 @@ def _deeper(top: Floats, base: Floats, step: float) -> Bools:
     return deeper
 
 
-def _coarsest(z: Floats, base: Floats, top: Floats) -> Floats:
-    """Largest distance between neighbouring levels among the layers that touch (base, top)."""
-    widest = np.zeros(base.shape)
-    for i in range(z.shape[-1] - 1):
-        low, high = z[..., i : i + 1], z[..., i + 1 : i + 2]
-        with np.errstate(invalid="ignore"):
-            touches = (low < top) & (high > base)
-            widest = np.where(touches, np.fmax(widest, high - low), widest)
-    return widest
-
-
 def _surface_why(count: Floats, lowest: Floats) -> Words:
     above = f"the lowest wind is above the surface layer, higher than {SURFACE_LIMIT:.0f} m"
+    none = "there is no wind below 500 ft (152 m) above ground"
     with np.errstate(invalid="ignore"):
-        words = np.where(lowest <= SURFACE_LIMIT, "", above)
+        words = np.where(lowest <= SURFACE_LIMIT, "", np.where(lowest > LOWEST_REACH, none, above))
     return np.where(count == 0, "there is no usable wind", words).astype(object)
 
 

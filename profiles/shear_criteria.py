@@ -24,6 +24,7 @@ from backveer.profiles.flight_path import headwind
 from backveer.profiles.grid import at_height, compact
 from backveer.profiles.labels import Bools, Floats, Labelled, Words, variable
 from backveer.profiles.low_level_shear import SURFACE_LIMIT
+from backveer.profiles.sliding_layer import measured_between, strongest_layer
 from backveer.profiles.stack import Stack
 
 METRICS = ("shear", "vector_difference", "speed_difference", "headwind_change")
@@ -74,10 +75,17 @@ class Criteria(Labelled):
     value: Floats = variable("", "profile rule", "what the profile shows, in s-1 or m s-1")
     met: Bools = variable("1", "profile rule", "the value reaches the threshold")
     margin: Floats = variable("", "profile rule", "value minus threshold")
+    error: Floats = variable("", "profile rule", "standard error of the value")
+    lower_bound: Bools = variable(
+        "1", "profile rule", "the winds do not span the rule's layer: the true value may be larger"
+    )
+    span: Words = variable("", "profile rule", "what the winds do not span, empty where they do")
     why: Words = variable("", "profile rule", "why there is no value")
 
 
-def judge(stack: Stack, rules: tuple[Rule, ...], headings: Floats | None = None) -> Criteria:
+def judge(
+    stack: Stack, rules: tuple[Rule, ...], error: Floats, headings: Floats | None = None
+) -> Criteria:
     """
     Hold every profile against every rule.
 
@@ -87,6 +95,8 @@ def judge(stack: Stack, rules: tuple[Rule, ...], headings: Floats | None = None)
         Quality-checked profiles.
     rules
         The criteria.
+    error
+        Standard error of a wind component, shape (profile,). [m s-1]
     headings : array, shape (runway,), optional
         True headings of the runways. [degree]
 
@@ -94,26 +104,32 @@ def judge(stack: Stack, rules: tuple[Rule, ...], headings: Floats | None = None)
     -------
     Criteria
         ``met`` is False where there is no value, and ``why`` says so: a rule that cannot be judged
-        is not a rule that is passed.
+        is not a rule that is passed. Nor is one that the winds do not reach up to: see ``span``.
+        The ``error`` of a headwind change or of a speed difference is that of two components along
+        a line, of a vector difference the same, of a shear that over the rule's depth (over the
+        gap where the layer lies between two levels).
 
     Raises
     ------
     ValueError
         For a metric that is not known.
     """
-    values, reasons = [], []
+    values, errors, spans, reasons = [], [], [], []
     for rule in rules:
         if rule.metric not in METRICS:
             raise ValueError(
                 f"rule {rule.name!r} has the metric {rule.metric!r}. Use {', '.join(METRICS)}."
             )
-        value, why = _measure(stack, rule, headings)
+        value, depth, span, why = _measure(stack, rule, headings)
         values.append(value)
+        errors.append(np.where(np.isfinite(value), np.sqrt(2.0) * error / depth, np.nan))
+        spans.append(span)
         reasons.append(why)
     shape = (stack.profile_count, len(rules))
     threshold = np.array([rule.threshold for rule in rules], dtype=float)
     strict = np.array([rule.strict for rule in rules], dtype=bool)
     value = np.stack(values, axis=-1) if rules else np.zeros(shape)
+    span = np.stack(spans, axis=-1) if rules else np.zeros(shape, dtype=object)
     with np.errstate(invalid="ignore"):
         # A threshold met to rounding is met: 10 kt per 100 ft, however it was computed.
         slack = 1e-9 * threshold
@@ -124,46 +140,17 @@ def judge(stack: Stack, rules: tuple[Rule, ...], headings: Floats | None = None)
         value=value,
         met=met,
         margin=value - threshold,
+        error=np.stack(errors, axis=-1) if rules else np.zeros(shape),
+        lower_bound=span != "",
+        span=span,
         why=np.stack(reasons, axis=-1) if rules else np.zeros(shape, dtype=object),
     )
 
 
-def strongest_shear(z: Floats, w: Floats, depth: float) -> Floats:
-    """
-    Strongest vector shear over layers of a depth, anywhere in a profile.
-
-    Parameters
-    ----------
-    z : array, shape (..., level)
-        Heights, increasing, NaN beyond the last. [m]
-    w : array of complex, shape (..., level)
-        Wind, u + i v. [m s-1]
-    depth
-        Depth of the layers; 0 for those between neighbouring levels. [m]
-
-    Returns
-    -------
-    shear : array, shape (...)
-        Layers thinner than ``depth`` do not count; between levels farther apart than it the wind is
-        a straight line, so that their own shear stands. [s-1]
-
-    Notes
-    -----
-    The wind being piecewise linear, the difference over a sliding layer is convex between the
-    heights where an end of it passes a level: its largest value is at one of those.
-    """
-    if depth <= 0:
-        with np.errstate(invalid="ignore", divide="ignore"):
-            shears = np.abs(np.diff(w, axis=-1)) / np.diff(z, axis=-1)
-        shears = np.where(np.isfinite(shears), shears, -np.inf)
-    else:
-        ends = np.concatenate([at_height(z, w, z + depth) - w, w - at_height(z, w, z - depth)], -1)
-        shears = np.where(np.isfinite(ends), np.abs(ends) / depth, -np.inf)
-    strongest = np.max(shears, axis=-1, initial=-np.inf)
-    return np.where(np.isfinite(strongest), strongest, np.nan)
-
-
-def _measure(stack: Stack, rule: Rule, headings: Floats | None) -> tuple[Floats, Words]:
+def _measure(
+    stack: Stack, rule: Rule, headings: Floats | None
+) -> tuple[Floats, Floats, Words, Words]:
+    """Value, the depth that divides its error, what the winds do not span, why there is none."""
     usable = stack.usable("wind")
     z = np.where(usable, stack.height, np.nan)
     w = np.where(usable, stack.eastward_wind + 1j * stack.northward_wind, np.nan)
@@ -178,14 +165,26 @@ def _measure(stack: Stack, rule: Rule, headings: Floats | None) -> tuple[Floats,
     why = np.where(
         count < 2, f"there are fewer than two usable winds up to {rule.top:.0f} m", ""
     ).astype(object)
+    span = _not_spanned(count, z, rule.top)
+    whole = np.ones(stack.profile_count)
     if rule.metric == "shear":
-        value = strongest_shear(z, w, rule.depth)
+        base, top, difference = strongest_layer(z, w, rule.depth)
+        with np.errstate(invalid="ignore", divide="ignore", over="ignore"):
+            value = np.where(count < 2, np.nan, np.abs(difference) / (top - base))
+            depth = top - base
         thin = (why == "") & ~np.isfinite(value)
         why[thin] = f"the winds up to {rule.top:.0f} m span less than {rule.depth:.0f} m"
-        return np.where(count < 2, np.nan, value), why
+        ends = measured_between(z, base[:, np.newaxis], top[:, np.newaxis])
+        with np.errstate(invalid="ignore"):
+            gap = np.fmax(depth, (ends[1] - ends[0])[:, 0])
+            coarse = (why == "") & (span == "") & (ends[2][:, 0] > rule.depth * 1.001)
+        depth = np.where(ends[3][:, 0], depth, gap)
+        # A rule of no depth asks for the levels' own spacing, whatever it is.
+        span[coarse & (rule.depth > 0)] = "levels are farther apart than the rule's depth"
+        return value, depth, np.where(why == "", span, ""), why
     if rule.metric == "headwind_change":
         value = _largest_headwind_change(w, headings)
-        return np.where(count < 2, np.nan, value), why
+        return np.where(count < 2, np.nan, value), whole, np.where(why == "", span, ""), why
     with np.errstate(invalid="ignore"):
         high = (count >= 2) & ~(z[..., 0] <= SURFACE_LIMIT)
         difference = (
@@ -195,7 +194,25 @@ def _measure(stack: Stack, rule: Rule, headings: Floats | None) -> tuple[Floats,
         )
     why[high] = f"the lowest wind is above the surface layer, higher than {SURFACE_LIMIT:.0f} m"
     largest = np.max(np.where(np.isfinite(difference), difference, -np.inf), axis=-1)
-    return np.where(why == "", largest, np.nan), why
+    return np.where(why == "", largest, np.nan), whole, np.where(why == "", span, ""), why
+
+
+def _not_spanned(count: Floats, z: Floats, top: float) -> Words:
+    """Say where the winds begin above the surface layer or end below the top of the rule."""
+    last = np.take_along_axis(z, np.maximum(count - 1, 0)[:, np.newaxis], -1)[:, 0]
+    with np.errstate(invalid="ignore"):
+        high = ~(z[:, 0] <= SURFACE_LIMIT)
+        low = ~(last >= top * (1 - 1e-9))
+    text = np.select(
+        [high & low, high, low],
+        [
+            "the winds begin above the surface layer and end below the rule's top",
+            "the winds begin above the surface layer",
+            "the winds end below the rule's top",
+        ],
+        "",
+    )
+    return text.astype(object)
 
 
 def _largest_headwind_change(w: Floats, headings: Floats | None) -> Floats:

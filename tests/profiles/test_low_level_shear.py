@@ -112,6 +112,42 @@ def test_coarse_data_give_a_lower_bound_and_fine_data_do_not():
     np.testing.assert_allclose(fine.step_shear[0], KNOT_PER_100_FEET, rtol=1e-9)
 
 
+def test_the_strongest_hundred_feet_wherever_they_lie():
+    # 5 kt between 150 and 210 ft, calm change elsewhere: over 100 ft 5 kt, although the 60 ft alone
+    # have 8.3 kt per 100 ft; no step from 100 to 200 or 200 to 300 ft holds all of it.
+    answer = shear_of(profile([33, 150, 210, 900], [270] * 4, [10, 10, 15, 15]))
+    kt = KNOT_PER_100_FEET
+    assert answer.window_shear[0] / kt == pytest.approx(5)
+    assert answer.window_intensity[0] == "moderate"
+    assert answer.window_base[0] / FOOT == pytest.approx(110)
+    assert answer.window_top[0] / FOOT == pytest.approx(210)
+    assert answer.maximum_shear[0] / kt == pytest.approx(5 / 0.6)
+    assert np.nanmax(answer.step_shear[0]) < answer.window_shear[0]
+    assert answer.window_speed_difference[0] / KNOT == pytest.approx(5)
+    assert answer.window_direction_change[0] == pytest.approx(0)
+    assert (answer.window_measured_base / FOOT, answer.window_measured_top / FOOT) == (
+        pytest.approx([33]),
+        pytest.approx([210]),
+    )
+    assert answer.window_lower_bound[0]
+    assert np.isnan(shear_of(profile([33, 100], [270, 270], [10, 20])).window_shear[0])
+
+
+def test_inside_a_gap_a_step_has_the_error_of_the_gap():
+    # 467 ft between the levels: the shear of any 100 ft inside is theirs, and so is its error.
+    answer = shear_of(profile([33, 500], [270, 270], [10, 20]))
+    assert answer.window_error[0] == pytest.approx(answer.layer_error[0, 0])
+    assert answer.step_error[0, 1] == pytest.approx(answer.layer_error[0, 0])
+    # One that holds a level keeps the error of a level's wind over its own depth.
+    fine = shear_of(profile([33, 150, 210, 900], [270] * 4, [10, 10, 15, 15]))
+    assert fine.window_error[0] == pytest.approx(0.3 * 2**0.5 / (100 * FOOT))
+
+
+def test_no_level_below_500_ft_is_said():
+    answer = shear_of(profile([600, 900, 2000], [270] * 3, [10, 30, 35]))
+    assert answer.surface_why[0] == "there is no wind below 500 ft (152 m) above ground"
+
+
 def test_a_lowest_level_above_the_surface_layer_gives_no_surface_wind():
     answer = shear_of(profile([400, 900, 2000], [270] * 3, [10, 30, 35]))
     assert np.isnan(answer.reach_shear).all()
