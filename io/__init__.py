@@ -6,6 +6,7 @@ from typing import TYPE_CHECKING
 
 if TYPE_CHECKING:
     from backveer.io.readers.door import read
+    from backveer.io.readers.reading import Hints
 else:
 
     def __getattr__(name):
@@ -14,7 +15,11 @@ else:
             from backveer.io.readers.door import read
 
             return read
+        if name == "Hints":
+            from backveer.io.readers.reading import Hints
+
+            return Hints
         raise AttributeError(f"module {__name__!r} has no attribute {name!r}")
 
 
-__all__ = ["read"]
+__all__ = ["Hints", "read"]

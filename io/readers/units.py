@@ -142,10 +142,11 @@ def _bare(text: str) -> str:
     >>> _bare("[m s⁻¹]"), _bare("°C"), _bare("m.s^-1"), _bare("in knots"), _bare("km h**-1")
     ('ms-1', 'degc', 'ms-1', 'knots', 'kmh-1')
     """
+    text = text.replace("º", "°")  # NFKC would make an o of the ordinal that stands for a degree
     text = unicodedata.normalize("NFKC", text).casefold().strip().strip("[](){}<>").strip()
-    text = text.replace("\N{MINUS SIGN}", "-").replace("\N{EN DASH}", "-").replace("º", "°")
+    text = text.replace("\N{MINUS SIGN}", "-").replace("\N{EN DASH}", "-")
     text = text.replace("°", "deg").replace("˚", "deg")
-    text = re.sub(r"^(?:in|en|units?\s*[:=])\s+", "", text)
+    text = re.sub(r"^(?:in(?!\s*hg)|en|units?\s*[:=])\s+", "", text)
     text = re.sub(r"\bper\b", "per", text)
     return re.sub(r"[\s_.*^·⋅∙,]+", "", text)
 
