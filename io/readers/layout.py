@@ -137,6 +137,8 @@ def _find_anew(lines: Sequence[str], nameless: bool) -> Found:
             len(row) == width
             and not is_rule(lines[first])
             and _like_data(row, kinds, dialect.decimal)
+            # "Elevation: 52 m" has a number and, by its m, a missing mark.
+            and not _is_metadata(lines[first], dialect)
         ):
             break
     else:
