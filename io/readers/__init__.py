@@ -17,6 +17,8 @@ settle          what the numbers settle where the names leave it open
 plausible       what each quantity can be, and which numbers stand for a missing one
 moments         dates and times as people write them
 place_and_time  where and when: metadata lines and what the user says
+heights_from_pressure
+                by the hypsometric equation, or of the standard atmosphere
 levels          from columns in SI to the variables of a stack
 row_places      time and place of each row
 profiles_apart  which rows are one profile

@@ -10,23 +10,20 @@ import numpy as np
 from numpy.typing import NDArray
 
 from backveer.io.readers.errors import Contradiction, MissingColumn
+from backveer.io.readers.heights_from_pressure import heights_from_pressure
 from backveer.io.readers.names import Claim
-from backveer.io.readers.place_and_time import (
-    cannot_place,
-)
+from backveer.io.readers.place_and_time import cannot_place
 from backveer.io.readers.plausible import LIMITS, clean
 from backveer.io.readers.reading import ColumnReading
 from backveer.io.readers.settle import Counted, Settled, counted_from
 from backveer.io.readers.table import Table
-from backveer.profiles.air import standard_atmosphere, standard_height
+from backveer.profiles.air import standard_atmosphere
 from backveer.profiles.earth import geometric_altitude
-from backveer.profiles.flags import BIT
 from backveer.profiles.humidity import (
     dew_point_from_mixing_ratio,
     dew_point_from_relative_humidity,
     dew_point_from_specific_humidity,
 )
-from backveer.profiles.hydrostatics import hypsometric_altitude
 from backveer.profiles.stack import wind_components
 
 Array = NDArray[np.float64]
@@ -159,10 +156,23 @@ def wind(
     Raises
     ------
     MissingColumn
-        There is no wind, or half of it.
+        There is no wind, or half of it, or no level has one.
     Contradiction
         Both are there and disagree.
     """
+    u, v = _components(have, si, notes, by)
+    if not (np.isfinite(u) & np.isfinite(v)).any():
+        raise MissingColumn(
+            "there is no wind: it is missing at every level",
+            "Check the missing codes, or name other columns with --column",
+        )
+    return {"eastward_wind": u, "northward_wind": v}
+
+
+def _components(
+    have: Callable[[str], bool], si: Callable[[str], Array], notes: Notes, by: Mapping[str, Claim]
+) -> tuple[Array, Array]:
+    """Return u and v; where one of them is missing, from speed and direction."""
     pair = have("eastward_wind") and have("northward_wind")
     direction = next(
         (name for name in ("wind_from_direction", "wind_to_direction") if have(name)), None
@@ -176,7 +186,7 @@ def wind(
             angle = angle + 180.0
         u, v = wind_components(speed, angle)
         if not pair:
-            return {"eastward_wind": u, "northward_wind": v}
+            return u, v
         east, north = si("eastward_wind"), si("northward_wind")
         with np.errstate(invalid="ignore"):
             apart = np.hypot(u - east, v - north)
@@ -191,7 +201,11 @@ def wind(
             )
         for name in ("wind_speed", direction):
             notes.add(by[name], "u and v agree with it and are used")
-    return {"eastward_wind": si("eastward_wind"), "northward_wind": si("northward_wind")}
+        there = np.isfinite(east) & np.isfinite(north)
+        if there.all():
+            return east, north
+        return np.where(there, east, u), np.where(there, north, v)
+    return si("eastward_wind"), si("northward_wind")
 
 
 def _no_wind(have: Callable[[str], bool], notes: Notes) -> MissingColumn:
@@ -293,7 +307,19 @@ def vertical(
         return
     if "air_pressure" not in levels:
         raise no_height(notes.table.header)
-    _from_pressure(levels, profile, base, notes)
+    found = heights_from_pressure(
+        levels["air_pressure"],
+        levels.get("air_temperature"),
+        levels.get("dew_point_temperature"),
+        base,
+        profile["latitude"],
+        any(claim.unit is not None and claim.unit.kind == "level" for claim in notes.claims),
+    )
+    levels["height"] = found.height
+    if np.isfinite(base).any():
+        levels["altitude"] = found.altitude
+    levels["level_flag"] = levels.get("level_flag", np.uint32(0)) | found.flag
+    notes.remarks.append(found.remark)
 
 
 def no_height(header: tuple[str, ...]) -> MissingColumn:
@@ -303,47 +329,6 @@ def no_height(header: tuple[str, ...]) -> MissingColumn:
         'Name one with --column height="HEADER", altitude="HEADER" or air_pressure="HEADER"; '
         f"the columns are: {', '.join(header)}",
     )
-
-
-def _from_pressure(
-    levels: dict[str, Any], profile: dict[str, Any], base: Array, notes: Notes
-) -> None:
-    """Derive heights from pressure, hypsometric where there is temperature."""
-    p = levels["air_pressure"]
-    start = np.where(np.isfinite(base), base, 0.0)
-    latitude = np.asarray(profile["latitude"], dtype=float)
-    ground = "the lowest level was taken as the surface"
-    flag = levels.setdefault("level_flag", np.zeros(p.shape, dtype=np.uint32))
-    altitude = None
-    if "air_temperature" in levels:
-        place = latitude if np.isfinite(latitude).any() else None
-        altitude = hypsometric_altitude(
-            p,
-            levels["air_temperature"],
-            levels.get("dew_point_temperature"),
-            np.broadcast_to(start, p.shape[:1]),
-            None if place is None else np.broadcast_to(place, p.shape[:1]),
-        )
-        good = np.isfinite(altitude)
-        flag |= np.where(good, np.uint32(BIT["height_from_hypsometric_equation"]), np.uint32(0))
-        by = "heights were derived from pressure by the hypsometric equation"
-        lost = int(np.count_nonzero(np.isfinite(p) & ~good))
-        if lost:
-            by += f" ({lost} levels are too far from any temperature)"
-    if altitude is None or not np.isfinite(altitude).any():
-        standard = np.asarray(standard_height(p))
-        lowest = np.fmin.reduce(standard, axis=-1)[..., np.newaxis]
-        altitude = geometric_altitude(standard - lowest) + start[..., np.newaxis]
-        good = np.isfinite(altitude)
-        flag |= np.where(good, np.uint32(BIT["height_from_standard_atmosphere"]), np.uint32(0))
-        by = (
-            "heights were derived from pressure by the standard atmosphere, for want of temperature"
-        )
-    levels["height"] = altitude - np.fmin.reduce(altitude, axis=-1)[..., np.newaxis]
-    if np.isfinite(base).any():
-        levels["altitude"] = altitude
-    levels["level_flag"] = flag
-    notes.remarks.append(f"{by}; {ground}")
 
 
 def _counted(claim: Claim, counted: Counted, notes: Notes) -> None:

@@ -66,6 +66,11 @@ class _Rows:
     def has(self, quantity: str) -> bool:
         return quantity in self.by
 
+    def forget(self) -> None:
+        """Let go of the columns, which for a large table fill the memory."""
+        self.raw.clear()
+        self.made.clear()
+
     def __call__(self, quantity: str) -> Array:
         """Return a column in SI, and say how its unit was settled."""
         if quantity not in self.made:
@@ -94,7 +99,7 @@ def as_numbers(column: NDArray[Any], claim: Claim, table: Table, notes: Notes) -
         No cell is a number.
     """
     if column.dtype == np.float64:
-        return column
+        return _measurable(column, claim, notes)
     values, places = numbers(column, table.decimal)
     if places.size:
         first = int(places[0])
@@ -108,7 +113,22 @@ def as_numbers(column: NDArray[Any], claim: Claim, table: Table, notes: Notes) -
             raise error
         cells = "1 cell is no number" if places.size == 1 else f"{places.size} cells are no numbers"
         notes.remarks.append(f'column "{claim.name}": {cells} (line {line}: "{cell}"), left out')
-    return values
+    return _measurable(values, claim, notes)
+
+
+_HUGE = 1e15  # no measurement in any unit; fill values of 1e20 and 9.97e36 are usual
+
+
+def _measurable(values: Array, claim: Claim, notes: Notes) -> Array:
+    """Return numbers without those that no instrument gives, which would overflow."""
+    if values.size == 0:
+        return values
+    low, high = np.fmin.reduce(values), np.fmax.reduce(values)
+    if not (low < -_HUGE or high > _HUGE):
+        return values
+    huge = np.abs(values) > _HUGE
+    notes.add(claim, f"{int(np.count_nonzero(huge))} values beyond 1e15 count as missing")
+    return np.where(huge, np.nan, values)
 
 
 def read_long(table: Table, claims: tuple[Claim, ...], site: Site) -> Draft:
@@ -144,38 +164,44 @@ def read_long(table: Table, claims: tuple[Claim, ...], site: Site) -> Draft:
     times, in_utc = row_times(table, rows.by, site, notes)
     keys = {name: table.columns[rows.by[name].column] for name in ("launch", "station", "source")
             if rows.has(name)}  # fmt: skip
-    axis = next((flat[name] for name in ("", *HEIGHTS) if name in flat), None)
-    if axis is None and "air_pressure" not in flat:
+    of_height = [flat[name] for name in ("", *HEIGHTS) if name in flat]
+    if not of_height and "air_pressure" not in flat:
         raise no_height(table.header)
-    if axis is None:
-        axis = -flat["air_pressure"]
+    axis: Array = of_height[0] if of_height else -flat["air_pressure"]
     if rows.has("level_flag"):
         flat["level_flag"] = _flags(rows, table, notes)
     per_row = {name: rows(name) for name in _OF_PROFILE if rows.has(name)}
+    rows.forget()
     if kept is not None:
         flat = {name: values[kept] for name, values in flat.items()}
         per_row = {name: values[kept] for name, values in per_row.items()}
         keys = {name: values[kept] for name, values in keys.items()}
         times = None if times is None else times[kept]
-        axis = None if axis is None else axis[kept]
+        axis = axis[kept]
     group, keyed = groups(axis, times, keys, flat["eastward_wind"].size)
-    told_apart(axis, group, table.header)
-    place, first, shape = places(axis, group)
-    levels: dict[str, Any] = {
-        name: _scatter(values, place, shape)
-        for name, values in flat.items()
-        if name != "level_flag"
-    }
+    told_apart(axis, group, keyed, table.header)
+    place, first, shape, moved = places(axis, group)
+    if moved:
+        of = "the profile were" if shape[0] == 1 else f"{moved} of {shape[0]} profiles were"
+        notes.remarks.append(f"the levels of {of} put into the order of their height")
+    levels: dict[str, Any] = {}
     if "level_flag" in flat:
         flags: Any = np.zeros(shape, dtype=np.uint32)
-        flags[place] = flat["level_flag"]
+        flags[place] = flat.pop("level_flag")
         levels["level_flag"] = flags
+    for name in list(flat):
+        levels[name] = _scatter(flat.pop(name), place, shape)
     if group is not None and not keyed and "station" not in keys:
         by = "height" if any(name in flat for name in ("", *HEIGHTS)) else "pressure"
         notes.remarks.append(f"profiles were told apart by the {by} starting again")
     profile = _of_profiles(
         site, per_row, keys, times if in_utc else None, group, first, place, shape
     )
+    if any(_drifts(per_row.get(name), group) for name in ("latitude", "longitude")):
+        notes.remarks.append(
+            "the position drifts from level to level, that of the site "
+            + ("was said" if np.isfinite(site.latitude) else "is the lowest level's")
+        )
     z = levels.pop("", None)
     vertical(levels, None if vague is None or z is None else (rows.by[vague], z), profile, notes)
     if not (np.count_nonzero(np.isfinite(levels["height"]), axis=1) > 1).any():
@@ -323,6 +349,17 @@ def _of_profiles(
         elif name == "station":
             profile[name] = np.full(shape[0], site.station, dtype=object)
     return profile
+
+
+def _drifts(values: Array | None, group: Indices | None) -> bool:
+    """Say whether a coordinate changes within any profile."""
+    if values is None:
+        return False
+    there = np.isfinite(values)
+    step = np.abs(np.diff(values[there]))
+    if group is not None:
+        step = step[np.diff(group[there]) == 0]
+    return bool((step > 1e-6).any())
 
 
 def _lowest_given(values: Array, place: tuple[Any, Any], shape: tuple[int, int]) -> Array:

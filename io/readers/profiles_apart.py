@@ -7,13 +7,14 @@ pressure) starting again.
 
 from __future__ import annotations
 
-from typing import Any
+from typing import Any, NamedTuple
 
 import numpy as np
 from numpy.typing import NDArray
 
 from backveer.io.readers.errors import MissingColumn
 from backveer.io.readers.levels import Array
+from backveer.profiles.level_order import increasing
 
 Indices = NDArray[np.intp]
 
@@ -43,7 +44,7 @@ def groups(
                 keyed = keyed or name == "launch"
     if times is not None and not keyed:
         codes, several = _codes(times)
-        if several > 1 and not _runs_on(axis, codes, group):
+        if several > 1 and (_same_heights(axis, several) or not _runs_on(axis, codes, group)):
             group = codes if group is None else _codes(group * several + codes)[0]
             keyed = True
     if not keyed and axis is not None:
@@ -54,6 +55,15 @@ def groups(
     if group is not None and int(group.max(initial=0)) == 0:
         group = None
     return group, keyed
+
+
+def _same_heights(axis: Array | None, several: int) -> bool:
+    """Say whether so many profiles would share one set of heights, each with most of them."""
+    if axis is None:
+        return False
+    there = axis[np.isfinite(axis)]
+    each = there.size / several
+    return each >= 2.0 and np.unique(there).size <= 1.5 * each
 
 
 def _runs_on(axis: Array | None, codes: Indices, group: Indices | None) -> bool:
@@ -83,7 +93,8 @@ def _restarts(axis: Array) -> NDArray[np.bool_] | None:
     Say at which rows the height begins again; None if it never does.
 
     A profile begins where the height falls back into the lowest fifth of what was reached, and
-    stays there for the next level: a single bad height is no beginning.
+    stays there for the next level: a single bad height is no beginning. Where the same heights
+    come again and again, as at a mast, the next level may be the topmost.
     """
     finite = np.flatnonzero(np.isfinite(axis))
     if finite.size < 4:
@@ -99,7 +110,10 @@ def _restarts(axis: Array) -> NDArray[np.bool_] | None:
     reached = s[:-1] - low
     here = s[1:] - low
     after = np.append(here[1:], here[-1])
-    back = (step < 0) & (here < 0.2 * reached) & (after < 0.5 * reached)
+    back = (step < 0) & (here < 0.2 * reached)
+    few = np.unique(s).size <= 0.5 * s.size
+    if not few:
+        back &= after < 0.5 * reached
     if not back.any():
         return None
     starts = np.zeros(axis.size, dtype=bool)
@@ -107,11 +121,21 @@ def _restarts(axis: Array) -> NDArray[np.bool_] | None:
     return starts
 
 
-def told_apart(axis: Array | None, group: Indices | None, header: tuple[str, ...]) -> None:
+def told_apart(
+    axis: Array | None, group: Indices | None, keyed: bool, header: tuple[str, ...]
+) -> None:
     """Refuse rows that repeat one height again and again with nothing to tell them apart."""
     if axis is None or axis.size < 6:
         return
     there = np.isfinite(axis)
+    mixed = False
+    if group is not None and not keyed:
+        with np.errstate(invalid="ignore"):
+            within = np.diff(axis)[group[1:] == group[:-1]]
+            up, down = np.count_nonzero(within > 0), np.count_nonzero(within < 0)
+            level = np.count_nonzero(within == 0)
+        # Where the height starts again it goes one way in between.
+        mixed = bool(min(up, down) + level > 0.25 * (up + down + level))
     if group is None:
         step = np.diff(axis)
         if (step > 0).all() or (step < 0).all():
@@ -120,7 +144,7 @@ def told_apart(axis: Array | None, group: Indices | None, header: tuple[str, ...
     else:
         _, codes = np.unique(axis[there], return_inverse=True)
         different = np.unique(group[there] * (int(codes.max(initial=0)) + 1) + codes).size
-    if different < 0.5 * np.count_nonzero(there):
+    if mixed or different < 0.5 * np.count_nonzero(there):
         raise MissingColumn(
             "heights repeat, and nothing tells profiles apart",
             'Name what does with --column time="HEADER", launch="HEADER" or station="HEADER"; '
@@ -128,32 +152,86 @@ def told_apart(axis: Array | None, group: Indices | None, header: tuple[str, ...
         )
 
 
-def places(
-    axis: Array | None, group: Indices | None
-) -> tuple[tuple[Any, Any], Indices, tuple[int, int]]:
-    """Return the place (profile, level) of each row, lowest level first, and first rows."""
+class Places(NamedTuple):
+    """
+    Where the rows of a table stand in the stack.
+
+    Attributes
+    ----------
+    of_row
+        Profile and level of each row, lowest level first.
+    first
+        First row of each profile.
+    shape
+        Numbers of profiles and levels.
+    put_in_order
+        How many profiles had their levels out of order.
+    """
+
+    of_row: tuple[Any, Any]
+    first: Indices
+    shape: tuple[int, int]
+    put_in_order: int
+
+
+def places(axis: Array, group: Indices | None) -> Places:
+    """
+    Return the place of each row.
+
+    Profiles from the top down are turned round. Levels in the order of their lines are left so, for
+    a balloon may sink for a while and the quality check knows; levels that stand in an order of
+    another kind (as words are sorted, significant levels after standard ones) are sorted.
+    """
     if group is None:
-        count = 0 if axis is None else axis.size
-        level = np.arange(count)
-        if axis is not None and _descends(axis):
+        level = np.arange(axis.size)
+        with np.errstate(invalid="ignore"):
+            step = np.diff(axis)
+            up, down = np.count_nonzero(step > 0), np.count_nonzero(step < 0)
+        if down > up:
             level = level[::-1]
-        return (np.zeros(count, dtype=np.intp), level), np.zeros(1, dtype=np.intp), (1, count)
+        of_row: tuple[Any, Any] = (np.zeros(axis.size, dtype=np.intp), level)
+        shape, moved = (1, int(axis.size)), 0
+        if min(up, down) > 0:
+            of_row, moved = _in_order(axis, of_row, shape)
+        return Places(of_row, np.zeros(1, dtype=np.intp), shape, moved)
     order = np.argsort(group, kind="stable")
     sizes = np.bincount(group)
     begin = np.concatenate([[0], np.cumsum(sizes)[:-1]])
     level = np.empty(group.size, dtype=np.intp)
     level[order] = np.arange(group.size) - np.repeat(begin, sizes)
-    if axis is not None:
-        s, g = axis[order], group[order]
-        with np.errstate(invalid="ignore"):
-            sign = np.where(g[1:] == g[:-1], np.sign(np.diff(s)), 0.0)
-        total = np.bincount(g[1:], weights=np.nan_to_num(sign), minlength=sizes.size)
-        down = total < 0
-        if down.any():
-            level = np.where(down[group], sizes[group] - 1 - level, level)
-    return (group, level), order[begin], (int(sizes.size), int(sizes.max()))
+    s, g = axis[order], group[order]
+    with np.errstate(invalid="ignore"):
+        sign = np.where(g[1:] == g[:-1], np.sign(np.diff(s)), 0.0)
+    total = np.bincount(g[1:], weights=np.nan_to_num(sign), minlength=sizes.size)
+    turned = total < 0
+    if turned.any():
+        level = np.where(turned[group], sizes[group] - 1 - level, level)
+    shape = (int(sizes.size), int(sizes.max()))
+    of_row, moved = _in_order(axis, (group, level), shape)
+    return Places(of_row, order[begin], shape, moved)
 
 
-def _descends(axis: Array) -> bool:
-    there = axis[np.isfinite(axis)]
-    return bool(there.size > 1 and np.sum(np.sign(np.diff(there))) < 0)
+def _in_order(
+    axis: Array, of_row: tuple[Any, Any], shape: tuple[int, int]
+) -> tuple[tuple[Any, Any], int]:
+    """Sort the levels of the profiles that stand out of order, and say how many there were."""
+    grid = np.full(shape, np.nan)
+    grid[of_row] = axis
+    with np.errstate(invalid="ignore"):
+        falls = np.count_nonzero(np.diff(grid, axis=1) < 0, axis=1)
+    rows = np.flatnonzero(falls)
+    if not rows.size:
+        return of_row, 0
+    finite = np.count_nonzero(np.isfinite(grid), axis=1)
+    if shape[0] == 1 or not _same_heights(axis, shape[0]):
+        # A few falls that cost many levels: blocks or words. A balloon that sinks falls at each.
+        lost = finite[rows] - np.count_nonzero(increasing(grid[rows]), axis=1)
+        rows = rows[(lost > np.maximum(2, 0.1 * finite[rows])) & (falls[rows] <= 0.5 * lost)]
+    if not rows.size:
+        return of_row, 0
+    level = np.broadcast_to(np.arange(shape[1]), shape).copy()
+    rank = np.empty((rows.size, shape[1]), dtype=np.intp)
+    sorting = np.argsort(grid[rows], axis=1, kind="stable")
+    np.put_along_axis(rank, sorting, np.arange(shape[1])[np.newaxis], axis=1)
+    level[rows] = rank
+    return (of_row[0], level[of_row]), int(rows.size)

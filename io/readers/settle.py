@@ -17,7 +17,7 @@ from backveer.io.readers.errors import Contradiction, UnknownUnit
 from backveer.io.readers.names import KINDS, Claim
 from backveer.io.readers.plausible import without_codes
 from backveer.io.readers.units import Unit, parse, spellings_of
-from backveer.profiles.air import GAS_CONSTANT, standard_height
+from backveer.profiles.air import DRY_ADIABATIC_LAPSE_RATE, GAS_CONSTANT, standard_height
 from backveer.profiles.earth import STANDARD_GRAVITY
 
 Array = NDArray[np.float64]
@@ -136,15 +136,15 @@ def _temperature(columns: Columns, quantity: str) -> Settled | None:
         if np.nanmedian(excess) <= 0.5:
             return Settled(unit, "unit as the temperature's, below which it stays")
         return None
-    return _by_thickness(columns, quantity)
+    return _by_thickness(columns, quantity) or _by_lapse(columns, quantity)
 
 
 def _by_thickness(columns: Columns, quantity: str) -> Settled | None:
     """Settle degrees C or F by the mean temperature that pressures and heights ask for."""
-    height = next((name for name in _HEIGHTS if columns.known(name) is not None), None)
-    if height is None or "air_pressure" not in columns.claims:
+    z = _some_height(columns)
+    if z is None or "air_pressure" not in columns.claims:
         return None
-    z, p = columns.values(height), columns.values("air_pressure")
+    p = columns.values("air_pressure")
     raw = columns.raw[quantity]
     good = np.isfinite(z) & np.isfinite(p) & np.isfinite(raw) & (p > 0)
     z, p, raw = z[good], p[good], raw[good]
@@ -161,6 +161,37 @@ def _by_thickness(columns: Columns, quantity: str) -> Settled | None:
     # Moisture, rounding and gravity make 1.5 %, C and F differ by 7 % at 5 degrees.
     if errors[better] < 0.02 and errors[1 - better] > 0.035:
         return Settled(units[better], "unit by the hypsometric equation")
+    return None
+
+
+def _by_lapse(columns: Columns, quantity: str) -> Settled | None:
+    """Settle degrees F where the air would turn over if the numbers were degrees C."""
+    z, raw = _some_height(columns), columns.raw[quantity]
+    if z is None:
+        return None
+    good = np.isfinite(z) & np.isfinite(raw)
+    if not good.any():
+        return None
+    low, high = (
+        int(np.argmin(np.where(good, z, np.inf))),
+        int(np.argmax(np.where(good, z, -np.inf))),
+    )
+    depth = float(z[high] - z[low])
+    # A layer this deep does not cool faster than adiabatic air; in degrees F it seems to.
+    if depth > 500.0 and float(raw[low] - raw[high]) > 1.1 * DRY_ADIABATIC_LAPSE_RATE * depth:
+        return Settled(_given("degF", "temperature"), "unit by the lapse rate, too steep for degC")
+    return None
+
+
+def _some_height(columns: Columns) -> Array | None:
+    """Return a height in m whose unit is given or settled by the pressure, None without one."""
+    names = [name for name in _HEIGHTS if name in columns.claims]
+    names.sort(key=lambda name: columns.known(name) is None)
+    for name in names:
+        try:
+            return columns.values(name)
+        except UnknownUnit:
+            continue
     return None
 
 
@@ -346,9 +377,15 @@ def counted_from(claim: Claim, z: Array, pressure: Array | None, elevation: Any)
     if pressure is not None:
         at = _median(standard_height(np.fmax.reduce(pressure, axis=-1)))
         # A day's surface pressure puts the standard height off by up to 300 m.
+        if base == base:
+            sea, ground = abs(lowest - at), abs(lowest + base - at)
+            if sea < 300.0 < ground:
+                return Counted("altitude", "above sea level, by the pressure of the lowest level")
+            if ground < 300.0 < sea:
+                return Counted("height", "above ground, by the pressure of the lowest level")
         if at > 600.0 and lowest < at - 500.0:
             return Counted("height", "above ground, by the pressure of the lowest level")
-        if at > 600.0 and abs(lowest - at) < 300.0 and (base != base or base > 600.0):
+        if at > 600.0 and abs(lowest - at) < 300.0 and base != base:
             return Counted("altitude", "above sea level, by the pressure of the lowest level")
     if by_name == "altitude":
         return Counted("altitude", f"{said}, as an altitude is")

@@ -501,10 +501,14 @@ def test_heights_from_pressure_alone_are_of_the_standard_atmosphere():
 
 
 def test_flight_levels_are_pressures():
-    result = draft("FL,Speed (kt),Dir (deg)\n10,20,200\n50,30,210\n180,35,220\n")
+    text = "FL,Speed (kt),Dir (deg)\n10,20,200\n50,30,210\n180,35,220\n"
+    with pytest.raises(MissingColumn, match="--elevation"):
+        draft(text)
+    result = draft(text, elevation=52.0)
     # FL180 is 506.0 hPa, FL50 843.1 hPa: ICAO Doc 7488, tables, from memory.
     assert result.levels["air_pressure"][0, 1:] == pytest.approx([84307, 50600], rel=2e-4)
     assert why(result, "FL").unit == "FL"
+    assert result.levels["altitude"][0] == pytest.approx([304.8, 1524.0, 5486.4], rel=2e-3)
 
 
 @pytest.mark.parametrize(
