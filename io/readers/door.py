@@ -81,6 +81,7 @@ def _read(inputs: Iterable[Input | ReadError], said: Hints) -> Reading:
             files += _checked(waiting)
             waiting, size = [], 0
         waiting.append((source, outcome))
+        del outcome
         size += cells
     files += _checked(waiting)
     return Reading(tuple(files), tuple(failures))
@@ -99,10 +100,13 @@ def _drafts(
         try:
             tables = read_tables(source, data, nameless=nameless)
             del data, opened
-            yield source, _understood(tables, hints)
+            outcome: list[Draft] | ReadError = _understood(tables, hints)
         except ReadError as error:
             error.source = error.source or source
-            yield source, error
+            outcome = error
+        tables = []  # only one copy of a large input may be in memory while it is checked
+        yield source, outcome
+        del outcome
 
 
 def _understood(tables: Sequence[Any], hints: Hints) -> list[Draft]:
@@ -126,7 +130,7 @@ def _checked(waiting: list[tuple[str, list[Draft]]]) -> list[FileReading]:
     if not waiting:
         return []
     drafts = [draft for _, group in waiting for draft in group]
-    whole = check(_joined(drafts))
+    whole = _check(_joined(drafts))
     files = []
     row = 0
     for source, group in waiting:
@@ -141,6 +145,25 @@ def _checked(waiting: list[tuple[str, list[Draft]]]) -> list[FileReading]:
             remarks = remarks + [remark for remark in other.remarks if remark not in remarks]
         files.append(FileReading(source, _with_source(stack, source), columns, tuple(remarks)))
     return files
+
+
+def _check(stack: Stack) -> Stack:
+    """Check a stack some rows at a time, so that a large one needs little more than itself."""
+    rows = max(1, _BATCH // max(1, stack.level_count))
+    if stack.profile_count <= rows:
+        return check(stack)
+    flags = np.zeros(stack.height.shape, dtype=np.uint32)
+    changed: dict[str, Any] = {}
+    for begin in range(0, stack.profile_count, rows):
+        part = _part(stack, begin, begin + rows, stack.level_count)
+        done = check(part)
+        flags[begin : begin + rows] = done.level_flag
+        for name in _LEVEL_FIELDS:
+            values = getattr(done, name)
+            if name != "level_flag" and (values is not getattr(part, name) or name in changed):
+                whole = changed.setdefault(name, getattr(stack, name).copy())
+                whole[begin : begin + rows] = values
+    return stack.replace(level_flag=flags, **changed)
 
 
 def _joined(drafts: list[Draft]) -> Stack:

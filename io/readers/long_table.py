@@ -192,7 +192,7 @@ def read_long(table: Table, claims: tuple[Claim, ...], site: Site) -> Draft:
     for name in list(flat):
         levels[name] = _scatter(flat.pop(name), place, shape)
     if group is not None and not keyed and "station" not in keys:
-        by = "height" if any(name in flat for name in ("", *HEIGHTS)) else "pressure"
+        by = "height" if of_height else "pressure"
         notes.remarks.append(f"profiles were told apart by the {by} starting again")
     profile = _of_profiles(
         site, per_row, keys, times if in_utc else None, group, first, place, shape
