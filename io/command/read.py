@@ -2,6 +2,8 @@
 
 from __future__ import annotations
 
+import sys
+
 import click
 
 from backveer.io.command.options import exit_status, reading_options
@@ -34,7 +36,7 @@ def read(files: tuple[str, ...], hints: Hints, as_json: bool, to: str | None) ->
     if as_json:
         from backveer.io.words.record import write_json
 
-        write_json(click.get_text_stream("stdout"), reading)
+        write_json(sys.stdout, reading)
     else:
         from backveer.io.words.understood import reading_text
 

@@ -2,6 +2,8 @@
 
 from __future__ import annotations
 
+import sys
+
 import click
 
 from backveer.io.command.options import (
@@ -116,7 +118,7 @@ def turn(
     if as_json:
         from backveer.io.words.record import write_json
 
-        write_json(click.get_text_stream("stdout"), reading, said)
+        write_json(sys.stdout, reading, said)
     elif count == 1 or profile is not None:
         from backveer.io.words.text import statement_text
 
