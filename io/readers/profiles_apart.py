@@ -21,6 +21,16 @@ Indices = NDArray[np.intp]
 
 def _codes(values: NDArray[Any]) -> tuple[Indices, int]:
     """Return a number for each different value, in the order of first appearance."""
+    begins = np.flatnonzero(np.asarray(values[1:] != values[:-1], dtype=bool)) + 1
+    if 4 * begins.size < values.size:
+        # Rows of one profile follow one another: one row of each is enough.
+        begins = np.concatenate([np.zeros(1, dtype=np.intp), begins])
+        of_runs, several = _codes_of(values[begins])
+        return np.repeat(of_runs, np.diff(np.append(begins, values.size))), several
+    return _codes_of(values)
+
+
+def _codes_of(values: NDArray[Any]) -> tuple[Indices, int]:
     if values.dtype == object:
         number = {value: place for place, value in enumerate(dict.fromkeys(values.tolist()))}
         return np.array([number[value] for value in values.tolist()], dtype=np.intp), len(number)
