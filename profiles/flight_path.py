@@ -21,7 +21,7 @@ import numpy as np
 
 from backveer.profiles.grid import at_height, compact
 from backveer.profiles.labels import Floats, Labelled, Words, variable
-from backveer.profiles.low_level_shear import STEP, TOP
+from backveer.profiles.low_level_shear import FOOT, STEP, TOP
 from backveer.profiles.sliding_layer import layer_differences
 from backveer.profiles.stack import Stack
 
@@ -226,7 +226,8 @@ def flight_path(
         why=np.where(
             enough[:, 0],
             "",
-            f"there are fewer than two usable winds up to {top:.0f} m above ground",
+            f"there are fewer than two usable winds up to {top / FOOT:.0f} ft ({top:.0f} m) "
+            "above ground",
         ).astype(object),
         ground_speed=float(ground_speed),
         glide_slope=float(glide_slope),

@@ -346,7 +346,7 @@ def _deeper(top: Floats, base: Floats, step: float) -> Bools:
 
 
 def _surface_why(count: Floats, lowest: Floats) -> Words:
-    above = f"the lowest wind is above the surface layer, higher than {SURFACE_LIMIT:.0f} m"
+    above = f"the lowest wind is above the surface layer, higher than {SURFACE_LIMIT:.0f} m (98 ft)"
     none = "there is no wind below 500 ft (152 m) above ground"
     with np.errstate(invalid="ignore"):
         words = np.where(lowest <= SURFACE_LIMIT, "", np.where(lowest > LOWEST_REACH, none, above))
@@ -354,6 +354,6 @@ def _surface_why(count: Floats, lowest: Floats) -> Words:
 
 
 def _why(levels: Floats, found: Bools, top: float) -> Words:
-    one = f"there is only one usable wind below {top:.0f} m above ground"
-    none = f"there is no usable wind below {top:.0f} m above ground"
+    one = f"there is only one usable wind below {top / FOOT:.0f} ft ({top:.0f} m) above ground"
+    none = f"there is no usable wind below {top / FOOT:.0f} ft ({top:.0f} m) above ground"
     return np.where(found, "", np.where(levels == 0, none, one)).astype(object)

@@ -30,12 +30,12 @@ import numpy as np
 
 from backveer.profiles import air
 from backveer.profiles.boundary_layer import BoundaryLayer, bulk_richardson_number
+from backveer.profiles.daylight import solar_elevation
 from backveer.profiles.ekman import EkmanFit
 from backveer.profiles.grid import at_height
 from backveer.profiles.labels import Bools, Floats, Labelled, Words, variable
 from backveer.profiles.low_level_shear import LowLevelShear
 from backveer.profiles.stack import Stack
-from backveer.profiles.sun import solar_elevation
 
 JET = "nocturnal jet on a stable layer"
 FRONT = "frontal inversion"

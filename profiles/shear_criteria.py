@@ -23,7 +23,7 @@ import numpy as np
 from backveer.profiles.flight_path import headwind
 from backveer.profiles.grid import at_height, compact
 from backveer.profiles.labels import Bools, Floats, Labelled, Words, variable
-from backveer.profiles.low_level_shear import SURFACE_LIMIT
+from backveer.profiles.low_level_shear import FOOT, SURFACE_LIMIT
 from backveer.profiles.sliding_layer import measured_between, strongest_layer
 from backveer.profiles.stack import Stack
 
@@ -163,7 +163,7 @@ def _measure(
         np.concatenate([w, cut], -1),
     )
     why = np.where(
-        count < 2, f"there are fewer than two usable winds up to {rule.top:.0f} m", ""
+        count < 2, f"there are fewer than two usable winds up to {_feet(rule.top)}", ""
     ).astype(object)
     span = _not_spanned(count, z, rule.top)
     whole = np.ones(stack.profile_count)
@@ -173,7 +173,7 @@ def _measure(
             value = np.where(count < 2, np.nan, np.abs(difference) / (top - base))
             depth = top - base
         thin = (why == "") & ~np.isfinite(value)
-        why[thin] = f"the winds up to {rule.top:.0f} m span less than {rule.depth:.0f} m"
+        why[thin] = f"the winds up to {_feet(rule.top)} span less than {_feet(rule.depth)}"
         ends = measured_between(z, base[:, np.newaxis], top[:, np.newaxis])
         with np.errstate(invalid="ignore"):
             gap = np.fmax(depth, (ends[1] - ends[0])[:, 0])
@@ -192,7 +192,9 @@ def _measure(
             if rule.metric == "vector_difference"
             else np.abs(np.abs(w) - np.abs(w[..., :1]))
         )
-    why[high] = f"the lowest wind is above the surface layer, higher than {SURFACE_LIMIT:.0f} m"
+    why[high] = (
+        f"the lowest wind is above the surface layer, higher than {SURFACE_LIMIT:.0f} m (98 ft)"
+    )
     largest = np.max(np.where(np.isfinite(difference), difference, -np.inf), axis=-1)
     return np.where(why == "", largest, np.nan), whole, np.where(why == "", span, ""), why
 
@@ -229,3 +231,7 @@ def _largest_headwind_change(w: Floats, headings: Floats | None) -> Floats:
             apart = np.abs(w[..., shift:] - w[..., :-shift])
         largest = np.fmax(largest, np.fmax.reduce(apart, axis=-1))
     return largest
+
+
+def _feet(height: float) -> str:
+    return f"{height / FOOT:.0f} ft ({height:.0f} m)"

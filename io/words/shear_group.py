@@ -15,6 +15,7 @@ from __future__ import annotations
 
 import numpy as np
 
+from backveer.io.words.shear_sentence import half_up
 from backveer.profiles.grid import compact
 from backveer.profiles.labels import Bools, Floats, Words
 from backveer.profiles.low_level_shear import FOOT, KNOT, SURFACE_LIMIT
@@ -41,9 +42,9 @@ def group(height: float, direction: float, speed: float) -> str:
     >>> group(1500 * FOOT, 297.0, 23.15)
     'WS015/30045KT'
     """
-    hundreds = max(1, _nearest(height / FOOT / 100))
-    tens = _nearest(direction / 10) % 36 or 36
-    return f"WS{hundreds:03d}/{tens * 10:03d}{_nearest(speed / KNOT):02d}KT"
+    hundreds = max(1, half_up(height / FOOT / 100))
+    tens = half_up(direction / 10) % 36 or 36
+    return f"WS{hundreds:03d}/{tens * 10:03d}{half_up(speed / KNOT):02d}KT"
 
 
 def candidate_groups(stack: Stack, wanted: Bools) -> tuple[Words, Floats]:
@@ -81,8 +82,3 @@ def candidate_groups(stack: Stack, wanted: Bools) -> tuple[Words, Floats]:
         if np.isfinite(direction):
             groups[row] = group(float(heights[row]), direction, float(np.abs(wind)))
     return groups, heights
-
-
-def _nearest(value: float) -> int:
-    """Round halves up, as people do, not to the even number."""
-    return int(np.floor(value + 0.5))

@@ -65,7 +65,7 @@ def test_the_worst_is_over_a_hundred_feet_not_between_noisy_neighbours():
 
 def test_too_few_levels_and_bad_speeds():
     path = flight_path(profile([33], [268], [8]), np.array([268.0]))
-    assert path.why[0] == "there are fewer than two usable winds up to 610 m above ground"
+    assert path.why[0] == "there are fewer than two usable winds up to 2000 ft (610 m) above ground"
     assert np.isnan(path.approach_change).all()
     with pytest.raises(ValueError, match="must be positive"):
         flight_path(profile([33], [268], [8]), np.array([268.0]), ground_speed=0.0)

@@ -159,8 +159,8 @@ def test_reasons_where_nothing_can_be_said():
     stack = Stack.concatenate([profile([3000, 5000], [1, 1], [9, 9]), profile([33], [1], [9])])
     answer = shear_of(stack)
     assert answer.why.tolist() == [
-        "there is no usable wind below 610 m above ground",
-        "there is only one usable wind below 610 m above ground",
+        "there is no usable wind below 2000 ft (610 m) above ground",
+        "there is only one usable wind below 2000 ft (610 m) above ground",
     ]
     assert shear_of(Stack.of(profiles=0)).why.tolist() == []
     assert shear_of(Stack.of(profiles=1)).why[0]

@@ -52,7 +52,7 @@ def test_without_a_runway_the_worst_heading_counts():
 def test_a_rule_that_cannot_be_judged_is_not_passed_in_silence():
     answer = hold(profile([33], [268], [10]), (rule("shear", 0.01),))
     assert not answer.met[0, 0]
-    assert answer.why[0, 0] == "there are fewer than two usable winds up to 610 m"
+    assert answer.why[0, 0] == "there are fewer than two usable winds up to 2000 ft (610 m)"
     high = hold(profile([400, 900], [268, 268], [10, 20]), (rule("vector_difference", 0.01),))
     assert "above the surface layer" in high.why[0, 0]
     with pytest.raises(ValueError, match="metric 'gust'"):

@@ -5,7 +5,7 @@ from __future__ import annotations
 import numpy as np
 import pytest
 
-from backveer.profiles.sun import solar_elevation
+from backveer.profiles.daylight import solar_elevation
 
 
 def elevation(time, latitude, longitude):
