@@ -42,6 +42,15 @@ _OF_LEVEL = (
     "availability",
     "carrier_to_noise_ratio",
 )
+# What is left unused where it holds words; of these, words are an error.
+_NEEDED = frozenset(
+    (
+        *("wind_speed", "wind_from_direction", "wind_to_direction"),
+        *("eastward_wind", "northward_wind", "air_pressure", "air_temperature"),
+        *HEIGHTS,
+        *VAGUE,
+    )
+)
 _OF_PROFILE = ("latitude", "longitude", "elevation", "wind_error")
 
 
@@ -52,13 +61,22 @@ class _Rows:
         self.notes = notes
         self.by = {claim.quantity: claim for claim in claims if claim.quantity is not None}
         raw: dict[str, Array] = {}
-        for quantity, claim in self.by.items():
+        for quantity, claim in list(self.by.items()):
             if quantity not in LIMITS and quantity not in VAGUE:
                 continue
             column = table.columns[claim.column]
             if quantity in ("latitude", "longitude"):
                 column = row_coordinates(column, claim, table.header)
-            raw[quantity] = as_numbers(column, claim, table, notes)
+            try:
+                raw[quantity] = as_numbers(column, claim, table, notes)
+            except Contradiction:
+                if quantity in _NEEDED:
+                    raise
+                del self.by[quantity]
+                if quantity == "elapsed_time":  # 00:01:30, for instance
+                    notes.say(claim, quantity, None, f"{claim.why}; no answer hangs on it")
+                else:
+                    notes.unused(claim, f"{quantity.replace('_', ' ')}: holds no numbers")
         self.columns = Columns(raw, self.by)
         self.raw = raw
         self.made: dict[str, Array] = {}

@@ -374,6 +374,7 @@ def compact_clock(values: NDArray[np.float64]) -> NDArray[np.float64] | None:
     >>> compact_clock(np.array([2315.0, 30.0]))
     array([83700.,  1800.])
     """
+    values = np.where(np.isfinite(values), values, np.nan)
     there = values[np.isfinite(values)]
     if there.size == 0 or (there < 0).any() or (there != np.floor(there)).any():
         return None

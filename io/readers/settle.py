@@ -53,6 +53,8 @@ class Columns:
                 self.settled[quantity] = Settled(claim.unit, claim.why)
             else:
                 found = _RULES[quantity](self, quantity) if quantity in _RULES else None
+                if found is None and not np.isfinite(self.raw[quantity]).any():
+                    found = _any_unit(quantity)
                 if found is None:
                     raise self.unknown(quantity)
                 self.settled[quantity] = Settled(found.unit, f"{claim.why}, {found.why}")
@@ -82,6 +84,13 @@ class Columns:
             f'the unit of column "{claim.name}" is not known, and the data do not settle it',
             f'Say it with --unit "{claim.name}={example}" ({signs})',
         )
+
+
+def _any_unit(quantity: str) -> Settled:
+    """Return a unit for a column without a single value."""
+    kind = KINDS[quantity][0]
+    sign = spellings_of(kind).split(", ")[0]
+    return Settled(_given(sign, kind), "no value is there, so the unit is of no matter")
 
 
 def _given(sign: str, kind: str) -> Unit:
@@ -132,8 +141,8 @@ def _temperature(columns: Columns, quantity: str) -> Settled | None:
         return None
     if quantity == "dew_point_temperature" and "air_temperature" in columns.claims:
         unit = columns.unit("air_temperature").unit
-        excess = columns.raw[quantity] - columns.raw["air_temperature"]
-        if np.nanmedian(excess) <= 0.5:
+        excess = _median(columns.raw[quantity] - columns.raw["air_temperature"])
+        if not excess > 0.5:
             return Settled(unit, "unit as the temperature's, below which it stays")
         return None
     return _by_thickness(columns, quantity) or _by_lapse(columns, quantity)
@@ -283,7 +292,7 @@ def _fraction(columns: Columns, quantity: str) -> Settled | None:
     top = _largest(columns, quantity)
     if top > 1.5:
         return Settled(_given("%", "fraction"), f"unit by magnitude (largest {top:g})")
-    if 0.0 < top <= 1.1:
+    if 0.0 <= top <= 1.1:
         return Settled(_given("1", "fraction"), f"a fraction by magnitude (largest {top:g})")
     return None
 

@@ -196,10 +196,9 @@ def _of_rows(
             column = table.columns[claim.column]
             if name != "elevation":
                 column = row_coordinates(column, claim, table.header)
+            column = as_numbers(column, claim, table, notes)
             settled = Columns({name: column}, {name: claim}).unit(name)
-            profile[name] = in_si(
-                as_numbers(column, claim, table, notes), name, settled, claim, notes, "left out"
-            )
+            profile[name] = in_si(column, name, settled, claim, notes, "left out")
         else:
             profile[name] = np.full(count, general)
     if "station" in single and not site.station:

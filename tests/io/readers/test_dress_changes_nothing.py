@@ -8,6 +8,7 @@ from hypothesis import given, settings
 from hypothesis import strategies as st
 
 from backveer.io.readers.columns import understand
+from backveer.io.readers.errors import Contradiction
 from backveer.io.readers.reading import Hints
 from backveer.io.readers.table import Table
 from backveer.profiles.hydrostatics import hypsometric_pressure
@@ -192,3 +193,44 @@ def test_the_unit_of_a_temperature_is_settled(unit, values, height):
     draft = understand(read, Hints())
     assert draft.columns[2].unit == unit
     np.testing.assert_allclose(draft.levels["air_temperature"][0], TEMPERATURE)
+
+
+@pytest.mark.parametrize("name", ["temp", "dwpt", "rh", "pres", "availability"])
+def test_a_column_without_a_value_and_without_a_unit_does_no_harm(name):
+    columns = [column for column in plain() if column[0] != name]
+    draft = understand(table([*columns, (name, "", np.full(len(HEIGHT), np.nan))]), Hints())
+    np.testing.assert_allclose(draft.levels["height"][0], HEIGHT)
+
+
+@pytest.mark.parametrize(
+    ("name", "read_as", "why"),
+    [
+        ("Elapsed time", "elapsed_time", "no answer hangs on it"),
+        ("RH (%)", None, "holds no numbers"),
+        ("Availability", None, "holds no numbers"),
+    ],
+)
+def test_words_in_a_column_that_no_answer_needs_do_no_harm(name, read_as, why):
+    words = np.array([f"00:0{i}:30" for i in range(len(HEIGHT))], dtype=object)
+    columns = [column for column in plain() if column[0] != "dwpt"]
+    draft = understand(table([*columns, (name, "", words)]), Hints())
+    assert draft.columns[-1].read_as == read_as
+    assert why in draft.columns[-1].why
+    np.testing.assert_allclose(draft.levels["height"][0], HEIGHT)
+
+
+def test_words_in_a_column_that_is_needed_are_an_error_with_line():
+    words = np.full(len(HEIGHT), "calm", dtype=object)
+    with pytest.raises(Contradiction, match='column "wspd" holds no numbers') as caught:
+        understand(table(plain(wspd=("m/s", words))), Hints())
+    assert caught.value.line == 7
+
+
+def test_the_elevation_of_a_wide_table_must_be_a_number():
+    words = np.array(["high", "low"], dtype=object)
+    two = np.array([5.0, 6.0])
+    columns = [
+        (f"{q}_{z} ({u})", "", two) for z in (40, 80) for q, u in (("ws", "m/s"), ("wd", "deg"))
+    ]
+    with pytest.raises(Contradiction, match='column "elev" holds no numbers'):
+        understand(table([*columns, ("elev", "", words)], metadata=()), Hints())
