@@ -16,7 +16,10 @@ import click
 
 from backveer.io.atomic import WriteError
 from backveer.io.command.desk import desk
+from backveer.io.command.outlook import outlook
 from backveer.io.command.read import read
+from backveer.io.command.rotor import rotor
+from backveer.io.command.shear import shear
 from backveer.io.command.turn import turn
 
 
@@ -32,7 +35,7 @@ def backveer() -> None:
     """
 
 
-for command in (read, turn, desk):
+for command in (read, turn, shear, desk, rotor, outlook):
     backveer.add_command(command)
 
 
