@@ -11,7 +11,8 @@ A rule names a metric, the layer in which it is taken, and a threshold. The metr
     Size of the change of wind speed between the surface wind and any height up to ``top``. [m s-1]
 ``headwind_change``
     Largest gain or loss of headwind between two heights of an approach or departure up to ``top``,
-    over the runways given; without one, along the heading that makes it largest. [m s-1]
+    over the runways given; without one, along the heading that makes it largest. However slowly it
+    comes: the most that an aircraft can meet, and more than it meets at once. [m s-1]
 """
 
 from __future__ import annotations

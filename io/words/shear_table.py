@@ -166,7 +166,9 @@ def _criteria(said: ShearStatement) -> list[str]:
 
 def _unanswered(said: ShearStatement) -> list[str]:
     reasons = Counter(
-        why for why in [*said.shear.why.tolist(), *said.shear.surface_why.tolist()] if why
+        why or surface
+        for why, surface in zip(said.shear.why, said.shear.surface_why, strict=True)
+        if why or surface
     )
     return [wrapped(f"{number} times: {why}", "  ") for why, number in reasons.most_common(3)]
 

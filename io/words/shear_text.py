@@ -271,7 +271,7 @@ def _criteria(one: ShearStatement, units: Units) -> str:
         if not np.isfinite(value):
             verdict, text = "not judged", f"not determined, because {criteria.why[0, i]}"
         else:
-            verdict = "MET" if criteria.met[0, i] else "not met"
+            verdict = "met" if criteria.met[0, i] else "not met"
             at_least = "at least " if criteria.lower_bound[0, i] else ""
             text = (
                 f"value {at_least}{with_error(value, error, unit)}, threshold "
@@ -283,13 +283,21 @@ def _criteria(one: ShearStatement, units: Units) -> str:
             if criteria.lower_bound[0, i]:
                 text += f"; {criteria.span[0, i]}"
         lines += pairs_of([(verdict.ljust(10), safe(f"{rule.name}: {text}", 500))])
-        source = f"{rule.authority}. {rule.verified or 'not said how it was verified'}"
+        source = f"{rule.authority}; {rule.verified or 'not said how it was verified'}"
         lines += pairs_of([(" " * 10, safe(source, 500))])
     if not lines:
         lines = [undetermined("no criteria were given")]
     along = any(rule.metric == "headwind_change" for rule in one.settings.rules)
     if along and not one.settings.headings:
         lines.append(wrapped("no runway is given: along the heading of largest change", "  "))
+    if along:
+        lines.append(
+            wrapped(
+                "A change along the path is between any two of its heights, however slowly it "
+                "comes: an aircraft meets less of it at once.",
+                "  ",
+            )
+        )
     return section("Criteria (local rules decide; --criteria adds or replaces)", lines)
 
 
