@@ -163,6 +163,8 @@ def _by_thickness(columns: Columns, quantity: str) -> Settled | None:
     if np.sum(np.abs(dz)) < 500.0:
         return None
     wanted = STANDARD_GRAVITY / GAS_CONSTANT * float(np.sum(dz * dlnp) / np.sum(dlnp**2))
+    if not wanted > 0.0:
+        return None
     mean = float(np.sum(0.5 * (raw[1:] + raw[:-1]) * dlnp**2) / np.sum(dlnp**2))
     units = (_given("degC", "temperature"), _given("degF", "temperature"))
     errors = [abs((mean * u.factor + u.offset) / wanted - 1.0) for u in units]
@@ -255,8 +257,8 @@ def _speed(columns: Columns, quantity: str) -> Settled | None:
     size = np.hypot(u, v)
     speed = without_far_codes(columns.raw["wind_speed"])
     with np.errstate(divide="ignore", invalid="ignore"):
-        ratios = np.where(size > 0, speed / size, np.nan)
-    ratios = ratios[np.isfinite(ratios)]
+        ratios = np.where((size > 0) & (speed > 0), speed / size, np.nan)
+    ratios = ratios[np.isfinite(ratios) & (ratios > 0)]
     if ratios.size == 0:
         return None
     ratio = float(np.median(ratios))  # of the numbers: speed's unit is that of u over it

@@ -8,7 +8,7 @@ from hypothesis import given, settings
 from hypothesis import strategies as st
 
 from backveer.io.readers.columns import understand
-from backveer.io.readers.errors import Contradiction
+from backveer.io.readers.errors import Contradiction, UnknownUnit
 from backveer.io.readers.reading import Hints
 from backveer.io.readers.table import Table
 from backveer.profiles.hydrostatics import hypsometric_pressure
@@ -234,3 +234,17 @@ def test_the_elevation_of_a_wide_table_must_be_a_number():
     ]
     with pytest.raises(Contradiction, match='column "elev" holds no numbers'):
         understand(table([*columns, ("elev", "", words)], metadata=()), Hints())
+
+
+@pytest.mark.parametrize(
+    "replaced",
+    [
+        {"wspd": ("", SPEED * 0.0), "u": ("m/s", U), "v": ("m/s", V)},
+        {"wspd": ("kt", SPEED * 0.0), "u": ("", U), "v": ("", V)},
+        {"wspd": ("", SPEED), "u": ("m/s", U * 0.0), "v": ("m/s", V * 0.0)},
+        {"temp": ("", TEMPERATURE - 273.15), "pres": ("hPa", np.tile([900.0, 901.0], 4))},
+    ],
+)
+def test_numbers_that_settle_no_unit_leave_it_to_the_user(replaced):
+    with pytest.raises(UnknownUnit, match="the data do not settle it"):
+        understand(table(plain(**replaced)), Hints())
