@@ -18,7 +18,7 @@ if TYPE_CHECKING:
     from backveer.profiles.rotor import Rotor, Turbine
     from backveer.profiles.stack import Stack
 
-_BLOCK = 8192  # profiles between two steps of the progress bar
+_BLOCK = 8192  # profiles at a time, and between two steps of the progress bar
 BY = ("hour", "month", "season", "sector", "speed", "stability")
 
 
@@ -383,12 +383,18 @@ def _averaged(reading: Reading, minutes: float, stamp: str) -> tuple[Reading, li
 
 def _fitted(stack: Stack, wanted: bool, wind_error: float | None) -> tuple[Any, Any, Any]:
     """Ekman fit where it is wanted, Coriolis parameter, and the error of a wind component."""
+    import numpy as np
+
     from backveer.profiles import earth
     from backveer.profiles.wind_error import wind_error as estimated
 
-    error = estimated(stack)
     if wind_error is not None:
-        error = error * 0.0 + wind_error
+        error = np.full(stack.profile_count, wind_error)
+    else:
+        # In blocks, because each needs many times the memory of its winds.
+        starts = range(0, max(stack.profile_count, 1), _BLOCK)
+        parts = [estimated(stack.select(slice(start, start + _BLOCK))) for start in starts]
+        error = np.concatenate(parts)
     coriolis = earth.coriolis(stack)
     if not wanted:
         return None, coriolis, error
@@ -433,7 +439,7 @@ def _told(
                     error=error[rows],
                 )
             )
-            advance(min(_BLOCK, count - start))
+            advance(len(parts[-1].veer))
     if len(parts) == 1:
         return parts[0]
     whole: dict[str, Any] = {

@@ -312,7 +312,7 @@ def _exceedance(ax: Axes, told: Rotor, name: str, label: str, legend: bool) -> N
     values = getattr(told, name)
     known = values[np.isfinite(values)]
     ax.set_xlabel(label)
-    ax.set_title("Share above" if legend else "", fontsize=9.5)
+    ax.set_title("Share of profiles above" if legend else "")
     if not known.size:
         ax.text(0.5, 0.5, "not determined", transform=ax.transAxes, ha="center", color="#555555")
         return
@@ -329,11 +329,12 @@ def _exceedance(ax: Axes, told: Rotor, name: str, label: str, legend: bool) -> N
             color=colour,
             ls=style,
             lw=1.6,
-            label=f"{cut(str(told.turbine[place]), 16)}: {count} of {len(values)} profiles",
+            label=f"{cut(str(told.turbine[place]), 16)}: {count} of {len(values)}",
         )
         lowest = min(lowest, 1.0 / max(count, 1))
     ax.set_yscale("log")
-    ax.set_ylim(max(100.0 * lowest, 1e-3), 140.0)
+    # Room for the legend below what one profile of all is.
+    ax.set_ylim(max(100.0 * lowest, 1e-3) / (12.0 if legend else 1.0), 140.0)
     ax.yaxis.set_major_formatter(lambda y, _: f"{y:g} %")
     ax.grid(color=PALE, lw=0.6)
     if legend:
