@@ -140,7 +140,9 @@ def heights_from_pressure(
             f"; {int(lost.sum())} of {lost.size} profiles have no heights, for their lowest level "
             "may not be the ground and no elevation is known"
         )
-    height = altitude - np.where(known, base, 0.0)[:, np.newaxis]
+    # The ground is at 0 exactly, whatever geopotential and geometric heights round to.
+    zero = np.where(ground, np.fmin.reduce(altitude, axis=-1), base)
+    height = altitude - zero[:, np.newaxis]
     return Heights(height, np.where(known[:, np.newaxis], altitude, np.nan), flag, remark)
 
 

@@ -137,19 +137,21 @@ def told_apart(
     """Refuse rows that repeat one height again and again with nothing to tell them apart."""
     if axis is None or axis.size < 6:
         return
-    there = np.isfinite(axis)
-    mixed = False
-    if group is not None and not keyed:
-        with np.errstate(invalid="ignore"):
-            within = np.diff(axis)[group[1:] == group[:-1]]
-            up, down = np.count_nonzero(within > 0), np.count_nonzero(within < 0)
-            level = np.count_nonzero(within == 0)
-        # Where the height starts again it goes one way in between.
-        mixed = bool(min(up, down) + level > 0.25 * (up + down + level))
-    if group is None:
+    with np.errstate(invalid="ignore"):
         step = np.diff(axis)
-        if (step > 0).all() or (step < 0).all():
-            return
+    if group is not None:
+        same = group[1:] == group[:-1]
+        whole = np.count_nonzero(same) == same.size - int(group.max())  # each in one piece
+        step = step[same]
+    rising, falling = np.count_nonzero(step > 0), np.count_nonzero(step < 0)
+    if max(rising, falling) == step.size and (group is None or whole):
+        return
+    # Where the height starts again it goes one way in between.
+    still = np.count_nonzero(step == 0)
+    one_way = min(rising, falling) + still <= 0.25 * (rising + falling + still)
+    mixed = group is not None and not keyed and not one_way
+    there = np.isfinite(axis)
+    if group is None:
         different = np.unique(axis[there]).size
     else:
         _, codes = np.unique(axis[there], return_inverse=True)
@@ -211,13 +213,15 @@ def places(axis: Array, group: Indices | None) -> Places:
     level[order] = np.arange(group.size) - np.repeat(begin, sizes)
     s, g = axis[order], group[order]
     with np.errstate(invalid="ignore"):
-        sign = np.where(g[1:] == g[:-1], np.sign(np.diff(s)), 0.0)
-    total = np.bincount(g[1:], weights=np.nan_to_num(sign), minlength=sizes.size)
+        sign = np.nan_to_num(np.where(g[1:] == g[:-1], np.sign(np.diff(s)), 0.0))
+    total = np.bincount(g[1:], weights=sign, minlength=sizes.size)
     turned = total < 0
     if turned.any():
         level = np.where(turned[group], sizes[group] - 1 - level, level)
     shape = (int(sizes.size), int(sizes.max()))
-    of_row, moved = _in_order(axis, (group, level), shape)
+    of_row, moved = (group, level), 0
+    if (sign < 0).any() and (sign > 0).any():
+        of_row, moved = _in_order(axis, of_row, shape)
     return Places(of_row, order[begin], shape, moved)
 
 

@@ -77,6 +77,7 @@ def test_with_temperature_the_hypsometric_equation_gives_the_heights():
     t, p = air(52.0)
     draft = read(52.0, **{"p (hPa)": p / 100.0, "T (K)": t})
     np.testing.assert_allclose(draft.levels["height"][0], HEIGHT - HEIGHT[0], atol=0.5)
+    assert draft.levels["height"][0, 0] == 0.0
     np.testing.assert_allclose(draft.levels["altitude"][0], HEIGHT - HEIGHT[0] + 52.0, atol=0.5)
     assert (draft.levels["level_flag"] == BIT["height_from_hypsometric_equation"]).all()
     assert any("hypsometric equation" in remark for remark in draft.remarks)
