@@ -256,7 +256,7 @@ def _speed(columns: Columns, quantity: str) -> Settled | None:
     u, v = (without_far_codes(columns.raw[name]) for name in pair)
     size = np.hypot(u, v)
     speed = without_far_codes(columns.raw["wind_speed"])
-    with np.errstate(divide="ignore", invalid="ignore"):
+    with np.errstate(divide="ignore", invalid="ignore", over="ignore"):
         ratios = np.where((size > 0) & (speed > 0), speed / size, np.nan)
     ratios = ratios[np.isfinite(ratios) & (ratios > 0)]
     if ratios.size == 0:
