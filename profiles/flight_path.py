@@ -89,7 +89,7 @@ class FlightPath(Labelled):
     step: float = STEP
 
 
-def headwind(u: Floats, v: Floats, heading: Floats) -> Floats:
+def headwind(u: Any, v: Any, heading: Any) -> Any:
     """
     Wind against an aircraft that moves along ``heading``.
 
@@ -114,7 +114,7 @@ def headwind(u: Floats, v: Floats, heading: Floats) -> Floats:
     return -(u * np.sin(angle) + v * np.cos(angle))
 
 
-def crosswind(u: Floats, v: Floats, heading: Floats) -> Floats:
+def crosswind(u: Any, v: Any, heading: Any) -> Any:
     """
     Wind across an aircraft that moves along ``heading``, positive from its right. [m s-1].
 
@@ -239,7 +239,8 @@ def flight_path(
 
 def _along(w: Any, headings: Floats) -> Floats:
     """Headwind of winds (profile, level) along each heading: (profile, runway, level)."""
-    return headwind(w.real[:, np.newaxis], w.imag[:, np.newaxis], headings[:, np.newaxis])
+    along: Floats = headwind(w.real[:, np.newaxis], w.imag[:, np.newaxis], headings[:, np.newaxis])
+    return along
 
 
 def _steepest(z: Floats, w: Any, headings: Floats, step: float) -> tuple[Floats, Floats, Floats]:

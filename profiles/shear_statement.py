@@ -75,7 +75,7 @@ class ShearStatement:
         if isinstance(profiles, (int, np.integer)):
             profiles = slice(int(profiles), int(profiles) + 1 or None)
         answers = {field.name: getattr(self, field.name) for field in fields(self)}
-        chosen = {
+        chosen: dict[str, Any] = {
             name: answer.select(profiles)
             for name, answer in answers.items()
             if isinstance(answer, Labelled)
@@ -86,8 +86,12 @@ class ShearStatement:
     def of_concern(self) -> Bools:
         """Profiles that meet a criterion, or whose strongest 100 ft are more than light."""
         more = np.isin(self.shear.window_intensity, ("moderate", "strong", "severe"))
-        met: Bools = self.criteria.met.any(axis=-1)
-        return more | met
+        return more | self.any_met
+
+    @property
+    def any_met(self) -> Bools:
+        """Profiles that meet some criterion."""
+        return np.asarray(np.any(self.criteria.met, axis=-1), dtype=np.bool_)
 
     def with_cause(self) -> Self:
         """Return the same with the cause looked for."""

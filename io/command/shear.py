@@ -2,6 +2,7 @@
 
 from __future__ import annotations
 
+import sys
 from typing import TYPE_CHECKING
 
 import click
@@ -161,9 +162,9 @@ def shear(
     )
     if watch:
         return watch_folder(watch, hints, settings, ends, units, as_json, interval)
-    from backveer.io import readers
+    from backveer.io.readers.door import read
 
-    reading = readers.read(files, hints)
+    reading = read(files, hints)
     if not reading.files:
         return exit_status(reading)
     _answer(reading, settings, ends, units, as_json, figure, sources, profile)
@@ -190,7 +191,8 @@ def _answer(
 
     count = reading.stack.profile_count
     if profile is not None and profile > count:
-        raise click.BadParameter(f"there are only {count} profiles", param_hint="--profile")
+        held = f"{count} profile{'s' * (count != 1)}"
+        raise click.BadParameter(f"there is no {profile}, only {held}", param_hint="--profile")
     index = (profile or 1) - 1
     names = tuple(end.name for end in ends)
     said = shear_statement(reading.stack, settings, cause=as_json)
@@ -199,7 +201,7 @@ def _answer(
         from backveer.io.words.shear_record import answer, shear_records
 
         records = shear_records(answer(said, names))
-        write_json(click.get_text_stream("stdout"), reading, low_level_shear=records)
+        write_json(sys.stdout, reading, low_level_shear=records)
     elif count == 1 or profile is not None:
         from backveer.io.words.shear_record import answer
         from backveer.io.words.shear_text import shear_text
@@ -247,8 +249,8 @@ def watch_folder(
     import json
     from pathlib import Path
 
-    from backveer.io import readers
     from backveer.io.command.watch import settled
+    from backveer.io.readers.door import read
     from backveer.io.words.shear_change import change_line, latest, met_rules
     from backveer.io.words.units import NAMED
     from backveer.profiles.shear_statement import shear_statement
@@ -257,7 +259,7 @@ def watch_folder(
     try:
         for paths in settled(Path(folder), interval, scans=scans):
             for path in paths:
-                reading = readers.read([path], hints)
+                reading = read([path], hints)
                 for failure in reading.failures:
                     click.echo(f"backveer: {failure}", err=True)
                 if not reading.files or not reading.stack.profile_count:
@@ -278,7 +280,7 @@ def watch_folder(
                     line = change_line(one, 0, before.get(station), NAMED[units])
                 before[station] = met_rules(one)
                 click.echo(line)
-                click.get_text_stream("stdout").flush()
+                sys.stdout.flush()
     except KeyboardInterrupt:
         click.echo("backveer: stopped watching.", err=True)
     return 0

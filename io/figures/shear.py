@@ -338,8 +338,7 @@ def _along(one: ShearStatement) -> tuple[Floats, Floats, Floats]:
     stack, heading = one.stack, float(one.path.runway[0])
     usable = stack.usable("wind")[0] & (stack.height[0] <= one.settings.top * (1 + 1e-9))
     u, v = stack.eastward_wind[0][usable], stack.northward_wind[0][usable]
-    along: Any = heading
-    return stack.height[0][usable], headwind(u, v, along), crosswind(u, v, along)
+    return stack.height[0][usable], headwind(u, v, heading), crosswind(u, v, heading)
 
 
 def _headwind_at(one: ShearStatement, z: Floats) -> Floats:
@@ -348,4 +347,5 @@ def _headwind_at(one: ShearStatement, z: Floats) -> Floats:
         stack.usable("wind"), stack.eastward_wind + 1j * stack.northward_wind, np.nan
     )
     w: Any = at_height(stack.height, wind, z)[0]
-    return headwind(w.real, w.imag, one.path.runway[0])
+    along: Floats = headwind(w.real, w.imag, one.path.runway[0])
+    return along

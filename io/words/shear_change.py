@@ -37,8 +37,13 @@ def change_line(said: ShearStatement, row: int, before: frozenset[str] | None, u
     name = safe(str(stack.station[0] or stack.source[0]), 40)
     if one.shear.why[0]:
         return f"{when}  {name}  not determined, because {one.shear.why[0]}"
-    parts = [" ".join(strongest_columns(one, units)[0].split())]
-    parts[0] = f"{parts[0]} {units.height.name}".replace(" ", f" {units.shear.name} ", 1)
+    text = strongest_columns(one, units)[0]
+    number, term, layer = text[:9].strip(), text[10:18].strip(), text[19:].strip()
+    parts = (
+        ["no shear larger than its error"]
+        if number.startswith("<")
+        else [f"{number} {units.shear.name} {term}, {layer} {units.height.name}"]
+    )
     met = met_rules(one)
     if before is None:
         parts.append(f"met: {'; '.join(sorted(met))}" if met else "no criterion met")

@@ -88,7 +88,8 @@ def _end(one: ShearStatement, i: int, name: str, units: Units) -> list[str]:
 
     pairs = [("approach", way("approach", loss, gain)), ("departure", way("departure", gain, loss))]
     pairs += _effects(one, path.runway[i], units)
-    return [f"  {name} (true heading {path.runway[i]:03.0f})", *pairs_of(pairs)]
+    note = "" if name.isdigit() and len(name) == 3 else ", from the designator: good to 5 degrees"
+    return [f"  {name} (true heading {path.runway[i]:03.0f}{note})", *pairs_of(pairs)]
 
 
 def _gain(change: float, units: Units) -> str:
@@ -132,7 +133,7 @@ def _effects(one: ShearStatement, heading: float, units: Units) -> list[tuple[st
 
 def _head_at(one: ShearStatement, heading: float, heights: list[float]) -> Floats:
     w = at_height(one.stack.height, _wind(one), heights)[0]
-    along: Floats = headwind(w.real, w.imag, heading)  # type: ignore[arg-type]
+    along: Floats = headwind(w.real, w.imag, heading)
     return along
 
 

@@ -6,8 +6,6 @@ from collections.abc import Sequence
 from dataclasses import dataclass
 from typing import Any
 
-import numpy as np
-
 from backveer.io.words.cautions import AVIATION
 from backveer.io.words.record import LEVEL_DECIMALS, plain
 from backveer.io.words.shear_group import candidate_groups
@@ -77,8 +75,7 @@ class ShearAnswer:
 
 def answer(said: ShearStatement, runways: tuple[str, ...]) -> ShearAnswer:
     """Write the candidate group and the sentence of each profile in which a criterion is met."""
-    met = np.asarray(said.criteria.met.any(axis=-1), dtype=bool)
-    groups, heights = candidate_groups(said.stack, met)
+    groups, heights = candidate_groups(said.stack, said.any_met)
     return ShearAnswer(said, runways, groups, heights, sentences(said, heights))
 
 

@@ -3,8 +3,8 @@ The plain sentence about low-level shear: a candidate for a forecaster's judgeme
 
 Rounding, so that nothing is told finer than it is known: heights to the nearest 10 ft, 100 ft from
 1000 ft up; directions to 10 degrees, north as 360; speeds and differences to the nearest knot;
-shears to half a knot per 100 ft. Halves go up, as people round. The words are ordinary small ones:
-nothing here reads like an issued warning, and each sentence begins by saying what it is.
+shears to a tenth of a knot per 100 ft. Halves go up, as people round. The words are ordinary small
+ones: nothing here reads like an issued warning, and each sentence begins by saying what it is.
 """
 
 from __future__ import annotations
@@ -107,7 +107,7 @@ def _layer(said: ShearStatement, row: int) -> str:
     if not value >= error:
         return "no shear is larger than the error of the measurement;"
     term = getattr(shear, f"{of}_intensity")[row]
-    rounded = half_up(2 * value / KNOT_PER_100_FEET) / 2
+    rounded = half_up(10 * value / KNOT_PER_100_FEET) / 10
     least = "at least " if window and shear.window_lower_bound[row] else ""
     return (
         f"strongest shear {least}{rounded:.1f} kt per 100 ft ({term}) from {feet(base)} to "

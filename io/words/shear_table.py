@@ -77,8 +77,7 @@ def _rows(said: ShearStatement, units: Units) -> list[str]:
 
 def groups_of(said: ShearStatement) -> list[str]:
     """Return the candidate group of each profile, empty where there is none."""
-    met = np.asarray(said.criteria.met.any(axis=-1), dtype=bool)
-    return [str(group) for group in candidate_groups(said.stack, met)[0]]
+    return [str(group) for group in candidate_groups(said.stack, said.any_met)[0]]
 
 
 def strongest_columns(said: ShearStatement, units: Units) -> list[str]:
@@ -112,8 +111,7 @@ def strongest_columns(said: ShearStatement, units: Units) -> list[str]:
 def _series(said: ShearStatement, of: np.ndarray, name: str, units: Units) -> list[str]:
     shear = said.shear
     value = np.where(np.isfinite(shear.window_shear), shear.window_shear, shear.maximum_shear)
-    met = said.criteria.met.any(axis=-1)
-    told = shear_series(said.stack.time[of], value[of], np.asarray(met[of], dtype=bool))
+    told = shear_series(said.stack.time[of], value[of], said.any_met[of])
     before = f"{name}: " if name else ""
     if told.count < 2:
         return []

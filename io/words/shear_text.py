@@ -244,7 +244,7 @@ def _from_surface(one: ShearStatement, units: Units) -> str:
         [
             plainly(shear.reach_height[0, i], units.height),
             _with(shear.reach_shear[0, i], shear.reach_error[0, i], units),
-            *_change(shear, "reach", i, units),
+            *_change(shear, "reach", int(i), units),
         ]
         for i in np.flatnonzero(np.isfinite(shear.reach_shear[0]))
     ]

@@ -23,7 +23,7 @@ def test_shipped_rules_are_si_and_say_where_they_come_from():
     assert len(rules) == 5
     assert all(rule.source and rule.verified and rule.wording for rule in rules.values())
     # South African CAR 174.04.10, seen: 15 kt or more, runway level to 500 m (1600 ft).
-    alert = rules["alert, 15 kt along the path"]
+    alert = rules["15 kt or more along the path"]
     assert (alert.threshold, alert.unit) == (pytest.approx(15 * KNOT), "kt")
     assert alert.top == pytest.approx(487.68)
     assert rules["10 kt per 100 ft over more than 200 ft"].threshold == pytest.approx(
