@@ -130,7 +130,7 @@ def turn(
     if figure is not None:
         from backveer.io.figures.sheet import draw
 
-        draw(said, index, figure)
+        draw(said, index, figure, units=units)
     if report is not None:
         from backveer.io.report.page import write_report
 
