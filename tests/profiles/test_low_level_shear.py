@@ -65,6 +65,32 @@ def test_stull_vector_shear():
     assert answer.maximum_shear[0] == pytest.approx(0.0064, abs=5e-5)
 
 
+def test_stull_second_vector_shear():
+    # The same book (checks W3): (10, 5) m/s at 1 km and (20, -3) m/s at 2 km: 0.0128 s-1.
+    stack = Stack.of(
+        height=[[1000.0, 2000.0]], eastward_wind=[[10.0, 20.0]], northward_wind=[[5.0, -3.0]]
+    )
+    answer = low_level_shear(stack, np.array([0.3]), top=2000.0)
+    assert answer.maximum_shear[0] == pytest.approx(0.0128, abs=5e-5)
+
+
+def test_bulk_shear_of_the_lowest_100_hpa():
+    # MetPy 1.7.1, docstring of bulk_shear (checks W6, seen): 1000, 925, 850, 700, 500 hPa; 165,
+    # 180, 190, 210, 220 degrees; 5, 15, 20, 30, 50 kt: (2.41943319, 11.6920573) kt over the lowest
+    # 100 hPa, interpolated in log pressure; with the heights of isothermal air that is linear in
+    # height.
+    pressure = np.array([1000.0, 925, 850, 700, 500])
+    z = 7000.0 * np.log(1000.0 / pressure)
+    depth = 7000.0 * np.log(1000.0 / 900.0)
+    u, v = wind_components(
+        np.array([5.0, 15, 20, 30, 50]) * KNOT, np.array([165.0, 180, 190, 210, 220])
+    )
+    stack = Stack.of(height=[z], eastward_wind=[u], northward_wind=[v])
+    answer = low_level_shear(stack, np.array([0.3]), top=depth, reaches=(depth,))
+    expected = np.hypot(2.41943319, 11.6920573)
+    assert answer.reach_vector_difference[0, 0] / KNOT == pytest.approx(expected, rel=1e-7)
+
+
 def test_bulk_shear_as_metpy_computes_it():
     from metpy.calc import bulk_shear
     from metpy.units import units
@@ -188,12 +214,24 @@ def test_adding_a_level_never_lowers_the_maximum(rows, more):
     assert after >= before * (1 - 1e-9)
 
 
+@given(levels)
+def test_the_southern_hemisphere_mirrors_the_northern(rows):
+    stack = stack_of(rows)
+    mirrored = stack.replace(northward_wind=-stack.northward_wind, latitude=-stack.latitude)
+    ours, theirs = shear_of(stack), shear_of(mirrored)
+    for name in ("layer_shear", "step_shear", "reach_shear", "maximum_shear", "window_shear"):
+        np.testing.assert_array_equal(getattr(ours, name), getattr(theirs, name))
+    turn, other = ours.layer_direction_change, theirs.layer_direction_change
+    apart = (turn + other + 180.0) % 360.0 - 180.0  # 180 degrees is its own mirror
+    np.testing.assert_allclose(np.abs(apart) % 360.0, 0.0 * apart, atol=1e-6)
+
+
 @given(levels, st.floats(0, 360))
 def test_rotating_the_wind_changes_no_size(rows, angle):
     stack = stack_of(rows)
     turned = (stack.eastward_wind + 1j * stack.northward_wind) * np.exp(1j * np.radians(angle))
     other = stack.replace(eastward_wind=turned.real, northward_wind=turned.imag)
-    for name in ("layer_shear", "step_shear", "reach_shear", "maximum_shear"):
+    for name in ("layer_shear", "step_shear", "reach_shear", "maximum_shear", "window_shear"):
         np.testing.assert_allclose(
             getattr(shear_of(other), name), getattr(shear_of(stack), name), rtol=1e-7, atol=1e-9
         )

@@ -31,6 +31,38 @@ def test_shipped_rules_are_si_and_say_where_they_come_from():
     )
 
 
+def test_each_shipped_threshold_is_that_of_its_source():
+    kt, ft = KNOT, 0.3048
+    told = {
+        rule.name: (rule.metric, rule.threshold, rule.top / ft, rule.depth / ft, rule.strict)
+        for rule in read_rules()
+    }
+    assert told == {
+        # Checks V3 and V4, seen in national law: 15 kt (7.5 m/s), runway level to 1600 ft.
+        "15 kt or more along the path": ("headwind_change", 15 * kt, pytest.approx(1600), 0, False),
+        # V8, seen in a training text of the authority: 20 kt within 2000 ft.
+        "gain or loss of 20 kt": ("headwind_change", 20 * kt, pytest.approx(2000), 0, False),
+        # V9, second hand: 10 kt per 100 ft in a layer more than 200 ft thick.
+        "10 kt per 100 ft over more than 200 ft": (
+            "shear",
+            pytest.approx(10 * KNOT_PER_100_FEET),
+            pytest.approx(2000),
+            pytest.approx(200),
+            False,
+        ),
+        # V10, second hand: above 15 kt.
+        "severe, more than 15 kt": ("headwind_change", 15 * kt, pytest.approx(2000), 0, True),
+        # V2b, from memory: above 12 kt per 100 ft.
+        "severe, more than 12 kt per 100 ft": (
+            "shear",
+            pytest.approx(12 * KNOT_PER_100_FEET),
+            pytest.approx(2000),
+            pytest.approx(100),
+            True,
+        ),
+    }
+
+
 def test_a_file_adds_replaces_or_stands_alone(tmp_path):
     path = tmp_path / "rules.toml"
     path.write_text(GOOD)
