@@ -2,6 +2,7 @@
 
 from __future__ import annotations
 
+import sys
 from typing import TYPE_CHECKING, Any
 
 import click
@@ -191,12 +192,12 @@ def rotor(
     with progress("reading", None):
         found = series(
             readers.read(files, _with_offset(hints, utc_offset)),
-            fixed_clock=utc_offset is not None,
+            utc_offset=utc_offset,
         )
     reading = found.reading
     if not reading.files:
         return exit_status(reading)
-    remarks = list(found.remarks)
+    remarks = [*reading.files[0].remarks, *found.remarks]
     if interval is not None:
         reading, said = _averaged(reading, interval, stamp)
         remarks += said
@@ -236,7 +237,7 @@ def rotor(
     if as_json:
         from backveer.io.words.rotor_record import write_rotor_json
 
-        write_rotor_json(click.get_text_stream("stdout"), reading, told, expected, over, run)
+        write_rotor_json(sys.stdout, reading, told, expected, over, run)
     else:
         click.echo(
             _printed(stack, told, expected, over, joint, units, remarks, profile, stamp, utc_offset)
@@ -365,6 +366,11 @@ def _averaged(reading: Reading, minutes: float, stamp: str) -> tuple[Reading, li
     from backveer.profiles.quality import check
 
     stack = reading.stack
+    if 1440 % minutes:
+        raise click.BadParameter(
+            f"averages over {minutes:g} min do not fill a day. Ten minutes are usual",
+            param_hint="--interval",
+        )
     try:
         means = interval_means(stack, np.timedelta64(round(minutes * 60e9), "ns"), stamp=stamp)
     except ValueError as error:
@@ -465,7 +471,9 @@ def _printed(
     from backveer.io.words import rotor_text
 
     if stack.profile_count == 1 or profile is not None:
-        return rotor_text.rotor_text(stack, told, expected, (profile or 1) - 1, units=units)
+        return rotor_text.rotor_text(
+            stack, told, expected, (profile or 1) - 1, remarks=remarks, units=units
+        )
     head, complete = rotor_text.record_text(stack, stamp, utc_offset, remarks)
     blocks = [head]
     for place in range(len(told.turbine)):

@@ -56,7 +56,7 @@ class Series:
         return self.reading.stack
 
 
-def series(reading: Reading, fixed_clock: bool = False) -> Series:
+def series(reading: Reading, utc_offset: float | None = None) -> Series:
     """
     Put what was read in time order.
 
@@ -64,8 +64,8 @@ def series(reading: Reading, fixed_clock: bool = False) -> Series:
     ----------
     reading
         From :func:`backveer.io.readers.door.read`.
-    fixed_clock
-        Whether the user says that the clock keeps one offset all year (``--utc-offset``).
+    utc_offset
+        Hours that the files' clock is ahead of UTC all year, where the user says so.
 
     Returns
     -------
@@ -80,7 +80,10 @@ def series(reading: Reading, fixed_clock: bool = False) -> Series:
     kept: list[FileReading] = []
     failures: list[ReadError] = list(reading.failures)
     for file in reading.files:
-        problem = clock_change(file.stack.time, fixed_clock or _says_utc(file))
+        problem = clock_change(
+            file.stack.time + np.timedelta64(round((utc_offset or 0.0) * 3600), "s"),
+            fixed_clock=utc_offset is not None or _says_utc(file),
+        )
         if problem is None:
             kept.append(file)
         else:

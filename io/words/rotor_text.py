@@ -3,11 +3,22 @@
 from __future__ import annotations
 
 from collections import Counter
+from collections.abc import Sequence
 
 import numpy as np
 
 from backveer.io.words.cautions import TURBINE
-from backveer.io.words.page import name_of, pairs_of, place_of, section, table, time_of, wrapped
+from backveer.io.words.findings import level_findings
+from backveer.io.words.page import (
+    bullet,
+    name_of,
+    pairs_of,
+    place_of,
+    section,
+    table,
+    time_of,
+    wrapped,
+)
 from backveer.io.words.safe import safe
 from backveer.io.words.units import NAMED, Unit, Units, plainly, with_error
 from backveer.profiles.classes import complete_record, usual_interval
@@ -26,7 +37,13 @@ DENSITY = Unit("kg/m3", 1.0)
 
 
 def rotor_text(
-    stack: Stack, told: Rotor, expected: ExpectedVeer | None, row: int, *, units: str = "si"
+    stack: Stack,
+    told: Rotor,
+    expected: ExpectedVeer | None,
+    row: int,
+    *,
+    remarks: Sequence[str] = (),
+    units: str = "si",
 ) -> str:
     """
     Write what each turbine meets in one profile.
@@ -37,6 +54,8 @@ def rotor_text(
         Profiles and answers, in the same order.
     row
         Which profile, from 0.
+    remarks
+        How it was read; what its levels show follows.
     units
         ``"si"`` or ``"aviation"``.
     """
@@ -45,6 +64,9 @@ def rotor_text(
     blocks = [f"{name_of(stack, row)}{when}\n{place_of(stack, row)}"]
     for place in range(len(told.turbine)):
         blocks.append(_turbine(told, expected, row, place, shown))
+    said = [*remarks, *level_findings(stack.select(row))[0]]
+    if said:
+        blocks.append(section("Remarks", [bullet(safe(remark, 400)) for remark in said]))
     return "\n\n".join(blocks)
 
 
@@ -98,12 +120,15 @@ def _turbine(told: Rotor, expected: ExpectedVeer | None, row: int, place: int, u
             ("  steepest inside", _rate(of("steepest_veer_rate"), units)),
         ]
     if np.isfinite(of("shear_exponent")) or np.isfinite(of("shear_exponent_tips")):
-        power = with_error(of("shear_exponent"), of("shear_exponent_error"), NUMBER)
+        power = "not determined"
+        if np.isfinite(of("shear_exponent")):
+            power = with_error(of("shear_exponent"), of("shear_exponent_error"), NUMBER)
         pairs.append(
             (
                 "shear exponent",
-                f"{power} by regression, {number('shear_exponent_tips', NUMBER, 2)} between the "
-                f"ends (the standards' normal profiles have {NORMAL_EXPONENT_ONSHORE:.2f} on land "
+                f"by regression {power}, between the ends "
+                f"{number('shear_exponent_tips', NUMBER, 2)} (the "
+                f"standards' normal profiles have {NORMAL_EXPONENT_ONSHORE:.2f} on land "
                 f"and {NORMAL_EXPONENT_OFFSHORE:.2f} at sea: for information)",
             )
         )
