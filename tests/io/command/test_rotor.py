@@ -195,7 +195,7 @@ def test_many_profiles_whole(capsys, lidar) -> None:
     assert (status, err) == (0, "")
     before, _, after = out.partition("backveer 0.1.0, inputs ")
     assert after[12:] == "\n" + CAUTION + "licensed practice decide.\n"
-    # The first profile ends at midnight: its interval lies in the hour from 23 on of the day before.
+    # The first profile ends at midnight: its interval lies in the hour before.
     assert before == MANY
 
 
