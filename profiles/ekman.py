@@ -17,9 +17,10 @@ is linear, so :math:`\delta` is found by variable projection (Golub, G. H., and 
 SIAM J. Numer. Anal. 10, 413-432), over the whole stack at once. A profile of the southern
 hemisphere is fitted as its mirror image (v to -v), so that every answer mirrors exactly.
 
-The members are compared by AICc (Hurvich, C. M., and C.-L. Tsai, 1989: Biometrika 76, 297-307) with
-the effective number of levels. Errors are those of :mod:`backveer.profiles.ekman_errors`. The
-publications are cited from memory.
+The member to name is chosen by AICc (Hurvich, C. M., and C.-L. Tsai, 1989: Biometrika 76, 297-307)
+with the effective number of levels and a price on each parameter. Errors and intervals allow for
+noise correlated along height (:mod:`backveer.profiles.ekman_errors`) and for the doubt about the
+member (:mod:`backveer.profiles.ekman_intervals`). The publications are cited from memory.
 """
 
 from __future__ import annotations
@@ -31,29 +32,21 @@ from typing import Any
 import numpy as np
 
 from backveer.profiles.earth import Coriolis
-from backveer.profiles.ekman_errors import LENGTHS, effective_levels, noise_weights, t95
-from backveer.profiles.ekman_moments import Profiles
-from backveer.profiles.ekman_parameters import describe, standard_errors, widen
-from backveer.profiles.ekman_search import (
-    MEMBERS,
-    TRIALS,
-    ceilings,
-    first_guess,
-    refine,
-)
+from backveer.profiles.ekman_errors import t95
+from backveer.profiles.ekman_intervals import averaged, tail_ends, weights_of
+from backveer.profiles.ekman_members import Members, fit_members
+from backveer.profiles.ekman_moments import profiles_of
+from backveer.profiles.ekman_parameters import QUANTITIES
+from backveer.profiles.ekman_search import MEMBERS
 from backveer.profiles.ekman_verdict import Evidence, judge
-from backveer.profiles.grid import compact, ordered_sum
+from backveer.profiles.grid import compact
 from backveer.profiles.labels import Floats, Labelled, Words, variable
 from backveer.profiles.stack import Stack
 
 #: Levels above this are not used: the family holds for the boundary layer and a linear geostrophic
 #: wind above it, and hardly a boundary layer is deeper (common practice, no source). [m]
 TOP = 3000.0
-#: What a parameter costs beyond AICc. Without it one profile in eight with independent noise is
-#: given a shear or a slip that it does not have, and its intervals miss; with it one in thirty
-#: (measured over 1500 synthetic profiles).
-PRICE = 2.0
-BLOCK = 1024  # profiles at a time: the working arrays stay in the processor's cache
+BLOCK = 65536  # profiles times levels at a time: memory stays flat
 MINIMUM_LEVELS = 5  # the smallest member has 3 parameters in 2 components; 5 leave 7 to spare
 
 
@@ -195,9 +188,10 @@ def fit(
     """
     count = stack.profile_count
     floor = np.zeros(count) if error is None else np.broadcast_to(error, (count,))
+    size = max(1, min(1024, BLOCK // max(stack.height.shape[1], 1)))
     parts = [
-        _fit_block(stack, coriolis, floor, slice(start, start + BLOCK), top, noise_length)
-        for start in range(0, max(count, 1), BLOCK)
+        _fit_block(stack, coriolis, floor, slice(start, start + size), top, noise_length)
+        for start in range(0, max(count, 1), size)
     ]
     if len(parts) == 1:
         return parts[0]
@@ -268,46 +262,16 @@ def _fit_block(
     lowest = z[:, 0]
     # A profile that is not fitted passes through without levels, and is refused at the end.
     count = np.where(fitted, count, 0)
-    data = Profiles(
-        z=np.where(np.isfinite(z), z, 0.0),
-        w=np.where(np.isfinite(u), u, 0.0) + 1j * np.where(np.isfinite(v), v, 0.0),
-        count=count,
-        unit=np.where(fitted, reach, 1.0),
-    )
+    data = profiles_of(z, u, v, count, np.where(fitted, reach, 1.0))
+    all_members = fit_members(data, np.abs(f), floor[rows], known_length)
+    answers, values, errors = all_members.answers, all_members.values, all_members.errors
+    may = all_members.sound & all_members.inside
+    aicc = np.where(may, all_members.aicc, np.inf)
+    choice = np.argmin(aicc, axis=-1)
     with np.errstate(over="ignore", invalid="ignore", divide="ignore", under="ignore"):
-        guess, edge = first_guess(data)
-        weights, effective = noise_weights(data, guess[:, [1, 3]], ~edge[:, 3])
-        if known_length is not None:
-            weights = np.where(np.arange(LENGTHS.size) == 0, 1.0, np.zeros_like(weights))
-            effective = effective_levels(data, np.full(weights.shape, float(known_length)))
-        length = ordered_sum(weights * LENGTHS) if known_length is None else known_length + 0 * f
-        levels = ordered_sum(weights * effective)
-        delta, projections, without_friction = refine(data, length[:, np.newaxis], guess)
-        answers = [
-            describe(member, delta[:, m], projections[m].coefficients, data.unit, np.abs(f))
-            for m, member in enumerate(MEMBERS)
-        ]
-        rms = np.stack([_rms(data, answer) for answer in answers], axis=-1)
-        sound = np.stack([p.sound[:, 0] for p in projections], axis=-1) & fitted[:, np.newaxis]
-        roof = np.minimum(ceilings(data.unit), TRIALS[-1])
-        inside = (delta > TRIALS[0] * 1.001) & (delta < roof * 0.999)
-        aicc = np.stack(
-            [
-                _aicc(p.residual[:, 0], data.count, levels, member.parameters)
-                for p, member in zip(projections, MEMBERS, strict=True)
-            ],
-            axis=-1,
-        )
-        aicc = np.where(sound & inside, aicc, np.inf)
-        null = np.minimum(
-            _aicc(without_friction[0], data.count, levels, 2),
-            _aicc(without_friction[1], data.count, levels, 4),
-        )
-        choice = np.argmin(aicc, axis=-1)
-        errors = standard_errors(
-            data, choice, delta, projections, weights, floor[rows], known_length
-        )
-        widen(errors, answers, choice, aicc)
+        values = _wrapped(values, choice)
+        trust = weights_of(np.where(may, all_members.doubt, np.inf).T)
+        off = averaged(values, errors, trust, choice)
     chosen = {
         name: _take(np.stack([answer[name] for answer in answers], -1), choice)
         for name in answers[0]
@@ -318,122 +282,113 @@ def _fit_block(
             levels=np.where(coriolis.applies[rows], np.count_nonzero(usable, axis=-1), 0),
             fitted=fitted,
             top=top,
-            sound=sound,
-            inside=inside,
+            sound=all_members.sound,
+            inside=all_members.inside,
             aicc=aicc,
-            null=null,
+            null=all_members.without_friction,
             lowest=lowest,
             reach=reach,
-            noise=np.maximum(floor[rows], errors["noise"]),
-            rms=_take(rms, choice),
-            delta=delta,
-            geostrophic=np.stack([answer["geostrophic"] for answer in answers], -1),
+            noise=np.maximum(floor[rows], _take(all_members.noise, choice)),
+            rms=_take(all_members.rms, choice),
             chosen=chosen,
-            errors=errors,
+            errors=dict(zip(QUANTITIES, off, strict=True)),
+            own=dict(zip(QUANTITIES, _of(choice, errors), strict=True)),
         )
     )
+    told = np.flatnonzero(verdict != "not determined")
+    low, high = np.full(off.shape, np.nan), np.full(off.shape, np.nan)
+    with np.errstate(over="ignore", invalid="ignore", divide="ignore", under="ignore"):
+        low[:, told], high[:, told] = tail_ends(
+            values[..., told], errors[..., told], trust[:, told], _of(choice, values)[:, told],
+            all_members.t[:, told] / t95(np.inf),
+        )  # fmt: skip
+    intervals = dict(zip(QUANTITIES, zip(off, low, high, strict=True), strict=True))
     return _answer(
-        answers, chosen, errors, choice, sound, aicc, rms, verdict, why, rotation, levels, length,
-        reach, fitted, t95(data.count + levels - _PARAMETERS[choice]),
+        all_members, chosen, intervals, choice, verdict, why, rotation, reach, fitted, np.abs(f)
     )  # fmt: skip
 
 
-_PARAMETERS = np.array([member.parameters for member in MEMBERS], dtype=float)
+def _of(choice: Any, stacked: Any) -> Any:
+    """Take the chosen member from the first axis of (member, quantity, profile)."""
+    return np.take_along_axis(stacked, choice[np.newaxis, np.newaxis], axis=0)[0]
 
 
-def _rms(data: Profiles, answer: Any) -> Any:
-    z = data.z
-    x = z / answer["scale_height"][:, np.newaxis]
-    e = np.exp(-x) * (np.cos(x) - 1j * np.sin(x))
-    fitted = answer["geostrophic"][:, np.newaxis] + answer["shear"][:, np.newaxis] * z
-    fitted = fitted + answer["amplitude"][:, np.newaxis] * e
-    apart = np.where(np.arange(z.shape[1]) < data.count[:, np.newaxis], data.w - fitted, 0.0)
-    return np.sqrt(ordered_sum(apart.real**2 + apart.imag**2) / np.maximum(data.count, 1))
-
-
-def _aicc(residual: Any, count: Any, levels: Any, parameters: int) -> Any:
-    """AICc of a member: the scale of the noise is a parameter too, and both components count."""
-    k = parameters + 1
-    numbers = 2.0 * count
-    # Where noise of long correlation leaves few effective levels, a parameter costs its most.
-    spare = np.maximum(2.0 * levels - k - 1.0, 1.0)
-    scatter = np.maximum(residual / np.maximum(numbers, 1.0), 1e-12)
-    value = numbers * np.log(scatter) + (2.0 + PRICE) * k + 2.0 * k * (k + 1.0) / spare
-    return np.where(numbers > k + 1, value, np.inf)
+def _wrapped(values: Any, choice: Any) -> Any:
+    """Take the angles of all members within half a turn of the chosen one's."""
+    place = QUANTITIES.index("cross_isobar_angle")
+    chosen = _of(choice, values)[place]
+    values[:, place] = chosen + (values[:, place] - chosen + 180.0) % 360.0 - 180.0
+    return values
 
 
 def _take(stacked: Any, choice: Any) -> Any:
-    return np.take_along_axis(stacked, choice[:, np.newaxis], axis=-1)[:, 0]
+    return np.take_along_axis(stacked, choice[..., np.newaxis], axis=-1)[..., 0]
 
 
 def _answer(
-    answers: Any,
+    members: Members,
     chosen: Any,
-    errors: Any,
+    intervals: Any,
     choice: Any,
-    sound: Any,
-    aicc: Any,
-    rms: Any,
     verdict: Any,
     why: Any,
     rotation: Any,
-    levels: Any,
-    length: Any,
     reach: Any,
     fitted: Any,
-    t: Any,
+    f: Any,
 ) -> EkmanFit:
     """Turn the southern hemisphere back and leave out what is not determined."""
     told = verdict != "not determined"
     values: dict[str, Any] = {}
 
-    def put(name: str, value: Any, error: Any, logarithmic: bool = False, flip: Any = 1.0) -> None:
-        with np.errstate(over="ignore", invalid="ignore"):
-            ends = (
-                (value * np.exp(-t * error), value * np.exp(t * error))
-                if logarithmic
-                else (flip * value - t * error, flip * value + t * error)
-            )
-            size = value * error if logarithmic else error
-        values[name] = np.where(told, flip * value, np.nan)
-        values[f"{name}_error"] = np.where(told, size, np.nan)
-        values[f"{name}_low"] = np.where(told, ends[0], np.nan)
-        values[f"{name}_high"] = np.where(told, ends[1], np.nan)
+    def put(name: str, value: Any, quantity: str, flip: Any = None) -> None:
+        error, low, high = intervals[quantity]
+        if flip is not None:
+            value = flip * value
+            low, high = np.where(flip < 0, -high, low), np.where(flip < 0, -low, high)
+        give(name, value, error, low, high)
+
+    def give(name: str, value: Any, error: Any, low: Any, high: Any) -> None:
+        values[name] = np.where(told, value, np.nan)
+        values[f"{name}_error"] = np.where(told, error, np.nan)
+        values[f"{name}_low"] = np.where(told, low, np.nan)
+        values[f"{name}_high"] = np.where(told, high, np.nan)
 
     g, shear, amplitude = chosen["geostrophic"], chosen["shear"], chosen["amplitude"]
-    put("scale_height", chosen["scale_height"], errors["scale_height"], logarithmic=True)
-    put("eddy_viscosity", chosen["eddy_viscosity"], 2.0 * errors["scale_height"], logarithmic=True)
-    put("geostrophic_eastward_wind", g.real, errors["eastward"])
-    put("geostrophic_northward_wind", g.imag, errors["northward"], flip=rotation)
-    put("geostrophic_eastward_shear", shear.real, errors["shear_eastward"])
-    put("geostrophic_northward_shear", shear.imag, errors["shear_northward"], flip=rotation)
-    put("departure_eastward_at_ground", amplitude.real, errors["departure_eastward"])
-    put(
-        "departure_northward_at_ground", amplitude.imag, errors["departure_northward"],
-        flip=rotation,
-    )  # fmt: skip
-    put("cross_isobar_angle", chosen["cross_isobar_angle"], errors["cross_isobar_angle"])
-    put(
-        "friction_velocity", chosen["friction_velocity"], errors["friction_velocity"],
-        logarithmic=True,
-    )  # fmt: skip
+    with np.errstate(over="ignore", invalid="ignore"):
+        for name in ("scale_height", "friction_velocity"):
+            error, low, high = intervals[f"log_{name}"]
+            give(name, chosen[name], chosen[name] * error, np.exp(low), np.exp(high))
+            if name == "scale_height":
+                # K = |f| delta^2 / 2
+                viscosity = chosen["eddy_viscosity"]
+                ends = (0.5 * f * np.exp(2.0 * end) for end in (low, high))
+                give("eddy_viscosity", viscosity, 2.0 * viscosity * error, *ends)
+    put("geostrophic_eastward_wind", g.real, "eastward")
+    put("geostrophic_northward_wind", g.imag, "northward", flip=rotation)
+    put("geostrophic_eastward_shear", shear.real, "shear_eastward")
+    put("geostrophic_northward_shear", shear.imag, "shear_northward", flip=rotation)
+    put("departure_eastward_at_ground", amplitude.real, "departure_eastward")
+    put("departure_northward_at_ground", amplitude.imag, "departure_northward", flip=rotation)
+    put("cross_isobar_angle", chosen["cross_isobar_angle"], "cross_isobar_angle")
     names = np.array([member.name for member in MEMBERS], dtype=object)
 
     def each(value: Callable[[Any], Any]) -> Any:
-        return np.where(sound, np.stack([value(answer) for answer in answers], axis=-1), np.nan)
+        stacked = np.stack([value(answer) for answer in members.answers], axis=-1)
+        return np.where(members.sound, stacked, np.nan)
 
     flip = rotation[:, np.newaxis]
     return EkmanFit(
         **values,
         model=np.where(told, names[choice], "").astype(object),
         rotation=rotation,
-        rms=np.where(told, _take(rms, choice), np.nan),
-        effective_levels=np.where(fitted, levels, np.nan),
-        noise_length=np.where(fitted, length, np.nan),
+        rms=np.where(told, _take(members.rms, choice), np.nan),
+        effective_levels=np.where(fitted, members.levels, np.nan),
+        noise_length=np.where(fitted, members.length, np.nan),
         top=np.where(fitted, reach, np.nan),
         verdict=verdict,
         why=why,
-        candidate_model=np.where(sound, names, "").astype(object),
+        candidate_model=np.where(members.sound, names, "").astype(object),
         candidate_scale_height=each(lambda a: a["scale_height"]),
         candidate_eddy_viscosity=each(lambda a: a["eddy_viscosity"]),
         candidate_geostrophic_eastward_wind=each(lambda a: a["geostrophic"].real),
@@ -442,6 +397,6 @@ def _answer(
         candidate_geostrophic_northward_shear=flip * each(lambda a: a["shear"].imag),
         candidate_cross_isobar_angle=each(lambda a: a["cross_isobar_angle"]),
         candidate_friction_velocity=each(lambda a: a["friction_velocity"]),
-        candidate_rms=np.where(sound, rms, np.nan),
-        candidate_aicc=np.where(sound & np.isfinite(aicc), aicc, np.nan),
+        candidate_rms=np.where(members.sound, members.rms, np.nan),
+        candidate_aicc=np.where(members.sound & members.inside, members.aicc, np.nan),
     )

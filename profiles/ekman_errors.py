@@ -15,8 +15,8 @@ from typing import Any
 
 import numpy as np
 
-from backveer.profiles.ekman_moments import Profiles, basis_moments
-from backveer.profiles.ekman_search import MEMBERS, Member, Projection, project, tangent
+from backveer.profiles.ekman_moments import Moments, Profiles, Whitening, basis_moments
+from backveer.profiles.ekman_search import MEMBERS, Member, descent, project, tangent
 from backveer.profiles.grid import ordered_sum
 
 #: Noise lengths that are weighed; none says that neighbouring levels err independently. [m]
@@ -41,7 +41,7 @@ def t95(freedom: Any) -> Any:
     return np.interp(1.0 / np.maximum(freedom, 1.0), 1.0 / _FREEDOM[::-1], _T95[::-1])
 
 
-def noise_weights(data: Profiles, delta: Any, sheared: Any) -> tuple[Any, Any]:
+def noise_weights(data: Profiles, noise: Whitening, delta: Any, sheared: Any) -> Any:
     """
     Weigh the noise lengths by the restricted likelihood of the richest member that may be fitted.
 
@@ -49,6 +49,8 @@ def noise_weights(data: Profiles, delta: Any, sheared: Any) -> tuple[Any, Any]:
     ----------
     data
         The profiles.
+    noise
+        Of the lengths that are weighed.
     delta : array, shape (profile, 2)
         Scale heights of the partial-slip and of the sheared partial-slip member. [m]
     sheared : array of bool, shape (profile,)
@@ -58,12 +60,9 @@ def noise_weights(data: Profiles, delta: Any, sheared: Any) -> tuple[Any, Any]:
     -------
     weights : array, shape (profile, length)
         Adding up to one.
-    effective : array, shape (profile, length)
-        Effective number of levels for each length: 1 + sum of (1 - rho) / (1 + rho).
     """
-    lengths = np.broadcast_to(LENGTHS, (data.z.shape[0], LENGTHS.size))
     chosen = np.where(sheared, delta[:, 1], delta[:, 0])[:, np.newaxis]
-    sums = basis_moments(data, np.broadcast_to(chosen, lengths.shape), lengths)
+    (sums,) = basis_moments(data, chosen, noise)
     logs = []
     for member in (MEMBERS[1], MEMBERS[3]):
         one = project(sums, member)
@@ -71,27 +70,26 @@ def noise_weights(data: Profiles, delta: Any, sheared: Any) -> tuple[Any, Any]:
         residual = one.residual - np.abs(one.tangent_rhs) ** 2 / size
         # Rounding of the data leaves some scatter even where the fit is perfect.
         residual = np.maximum(residual, 1e-9 * (sums.wind + 1e-300))
-        freedom = np.maximum(data.count[:, np.newaxis] - len(member.columns) - 1, 1)
+        freedom = np.maximum(data.count - len(member.columns) - 1, 1)[:, np.newaxis, np.newaxis]
         logs.append(
             -freedom * np.log(residual) - sums.log_determinant - one.log_pivots - np.log(size)
         )
-    log = np.where(sheared[:, np.newaxis], logs[1], logs[0])
+    log = np.where(sheared[:, np.newaxis], logs[1][..., 0], logs[0][..., 0])
     weights = np.exp(log - log.max(axis=-1, keepdims=True))
-    return weights / ordered_sum(weights)[:, np.newaxis], effective_levels(data, lengths)
+    return weights / ordered_sum(weights)[:, np.newaxis]
 
 
 def effective_levels(data: Profiles, length: Any) -> Any:
-    """Effective number of levels for a mean, by noise length; shape of ``length``."""
-    z, count = data.z, data.count
-    effective = np.where(count > 0, 1.0, 0.0)[:, np.newaxis] + np.zeros(length.shape)
-    safe = np.where(length > 0, length, 1.0)
-    with np.errstate(under="ignore"):
-        for i in range(1, z.shape[1]):
-            there = (i < count)[:, np.newaxis]
-            gap = np.where(there, (z[:, i] - z[:, i - 1])[:, np.newaxis], 0.0)
-            rho = np.where(length > 0, np.exp(-gap / safe), 0.0)
-            effective = effective + np.where(there, (1.0 - rho) / (1.0 + rho), 0.0)
-    return effective
+    """
+    Effective number of levels for a mean, by noise length; shape of ``length``.
+
+    It is 1 + sum of (1 - rho) / (1 + rho) = tanh(gap / 2L) over the gaps between the levels.
+    """
+    there = np.arange(1, data.z.shape[1]) < data.count[:, np.newaxis]
+    gap = np.where(there, np.diff(data.z, axis=1), 0.0)[:, np.newaxis]
+    length = length[..., np.newaxis]
+    share = np.where(length > 0, np.tanh(0.5 * gap / np.where(length > 0, length, 1.0)), 1.0)
+    return (data.count > 0)[:, np.newaxis] + ordered_sum(np.where(there[:, np.newaxis], share, 0.0))
 
 
 @dataclass
@@ -104,36 +102,34 @@ class Spread:
 
     weights: Any
     noise: Any  # variance of one component
-    projection: Projection
+    inverse: list[list[Any]]
     change: list[Any]  # dc/dln(delta) of each coefficient
     curvature: Any
     move: Any  # shift of ln(delta) from the estimate
     shift: list[Any]  # shift of the coefficients from the estimate, at the same delta
 
-    def variance(self, a: list[Any], b: Any) -> Any:
-        """Variance of a quantity, shape (profile,); ``a`` complex and ``b`` real, (profile, 1)."""
-        k = len(self.change)
-        along = b + sum((a[j] * self.change[j]).real for j in range(k))
-        quadratic = sum(
-            (a[i] * self.projection.inverse[i][j] * np.conj(a[j])).real
-            for i in range(k)
-            for j in range(k)
-        )
-        with np.errstate(divide="ignore", invalid="ignore", over="ignore"):
-            each = self.noise * (quadratic + along**2 / self.curvature)
-            shift = sum((a[j] * self.shift[j]).real for j in range(k)) + along * self.move
-            terms = np.where(self.weights > 0, self.weights * (each + shift**2), 0.0)
-        return ordered_sum(terms)
+    def variance(self, a: dict[int, Any], b: Any) -> Any:
+        """Variance of a quantity, shape (profile,); complex ``a`` by place and real ``b`` alike."""
+        along, shift, quadratic = b[:, np.newaxis], 0.0, 0.0
+        for i, x in a.items():
+            x = x[:, np.newaxis]
+            along = along + (x * self.change[i]).real
+            shift = shift + (x * self.shift[i]).real
+            for j, y in a.items():
+                quadratic = quadratic + (x * self.inverse[i][j] * y.conj()[:, np.newaxis]).real
+        each = self.noise * (quadratic + along**2 / self.curvature)
+        shift = shift + along * self.move
+        return ordered_sum(np.where(self.weights > 0, self.weights * (each + shift**2), 0.0))
 
 
 def spread(
     member: Member,
     data: Profiles,
+    sums: Moments,
     delta: Any,
     coefficients: list[Any],
     weights: Any,
     least_noise: Any,
-    lengths: Any = None,
 ) -> Spread:
     """
     Work out how far the estimates of a member may be off.
@@ -142,34 +138,33 @@ def spread(
     ----------
     member, data
         Which member, and the profiles.
-    delta : array, shape (profile, 1)
+    sums
+        Moments for its scale height, under the noise of each length.
+    delta : array, shape (profile,)
         Its scale height. [m]
     coefficients
-        Its coefficients, each of shape (profile, 1).
+        Its coefficients, each of shape (profile,).
     weights : array, shape (profile, length)
         From :func:`noise_weights`.
     least_noise : array, shape (profile,)
         Standard error of a wind component from elsewhere, taken as the least noise. [m s-1]
-    lengths : array, shape (profile, length), optional
-        Other noise lengths than ``LENGTHS``. [m]
     """
-    if lengths is None:
-        lengths = np.broadcast_to(LENGTHS, (data.z.shape[0], LENGTHS.size))
-    wide = np.broadcast_to(delta, lengths.shape)
-    one = project(basis_moments(data, wide, lengths), member)
-    factor = tangent(member, one, wide, data.unit)
-    curvature = (factor.real**2 + factor.imag**2) * one.tangent_size
-    slope = (factor.conj() * one.tangent_rhs).real
-    with np.errstate(divide="ignore", invalid="ignore", over="ignore"):
-        move = np.where(curvature > 0, slope / curvature, 0.0)
-        residual = np.maximum(one.residual - np.where(curvature > 0, slope**2 / curvature, 0.0), 0)
+    one = project(sums, member)
+    factor = tangent(member, one, delta, data.unit)
+    downhill, curvature = descent(member, one, delta, data.unit)
+    move = np.where(curvature > 0, downhill / curvature, 0.0)
+    explained = np.where(curvature > 0, downhill**2 / curvature, 0.0)
     freedom = np.maximum(2 * data.count[:, np.newaxis] - member.parameters, 1)
+    noise = np.maximum(one.residual[..., 0] - explained, 0.0) / freedom
     return Spread(
         weights=weights,
-        noise=np.maximum(residual / freedom, (least_noise**2)[:, np.newaxis]),
-        projection=one,
-        change=[-factor * s for s in one.slope],
+        noise=np.maximum(noise, (least_noise**2)[:, np.newaxis]),
+        inverse=[[x[..., 0] for x in row] for row in one.inverse],
+        change=[-(factor * s)[..., 0] for s in one.slope],
         curvature=curvature,
         move=np.clip(move, -1.0, 1.0),
-        shift=[c - c0 for c, c0 in zip(one.coefficients, coefficients, strict=True)],
+        shift=[
+            c[..., 0] - c0[:, np.newaxis]
+            for c, c0 in zip(one.coefficients, coefficients, strict=True)
+        ],
     )

@@ -9,20 +9,32 @@ The basis at a level is [1, x, e, x e] with x the height in a unit of the profil
           \rho_i = \exp(-(z_i - z_{i-1}) / L)
 
 which is exact on irregular levels, because that process is Markov: given the level below, the ones
-farther down say nothing more.
+farther down say nothing more. So the inverse Q of the correlation matrix has three diagonals only,
 
-The sums run over the levels in order, one level at a time over all profiles and trials, in real
-arithmetic: so a profile in a stack gives bit for bit what it gives alone, and the loop is short.
+.. math:: Q_{ii} = q_i + \rho_{i+1}^2 q_{i+1}, \quad Q_{i,i-1} = -\rho_i q_i, \quad
+          q_i = 1 / (1 - \rho_i^2)
+
+and every inner product is a weighted sum over levels: what depends on the noise is weight, what
+depends on the scale height is column, and a trial of one against the other is a small matrix
+product.
+
+A matrix product over levels gives bits that depend on how many levels it is given. Here it is
+always given the same: the levels between fixed borders, filled up with zeros, and the parts are
+added in order. So a profile in a stack gives bit for bit what it gives alone.
 """
 
 from __future__ import annotations
 
+import itertools
 from dataclasses import dataclass
 from typing import Any, NamedTuple
 
 import numpy as np
 
 ONE, HEIGHT, DECAY, TANGENT = range(4)
+PART = 64  # levels in one matrix product, but for the borders below
+FIRST_BORDERS = (0, 16, 32)  # short profiles are not filled up to a whole part
+CACHE = 12288  # numbers in a column for which all columns stay in the processor's cache
 
 
 class Profiles(NamedTuple):
@@ -32,7 +44,7 @@ class Profiles(NamedTuple):
     Attributes
     ----------
     z, w : array, shape (profile, level)
-        Compact heights and complex wind; zero beyond ``count``. [m], [m s-1]
+        Compact heights and complex wind; zero beyond ``count``, up to a border. [m], [m s-1]
     count : array of int, shape (profile,)
         Number of levels.
     unit : array, shape (profile,)
@@ -44,15 +56,11 @@ class Profiles(NamedTuple):
     count: Any
     unit: Any
 
-    def at(self, rows: Any) -> Profiles:
-        """Return some of the profiles."""
-        return Profiles(*(array[rows] for array in self))
-
 
 @dataclass
 class Moments:
     """
-    Sums over the whitened levels, each of a shape that broadcasts to (profile, trial).
+    Sums over the whitened levels, each of a shape that broadcasts to (profile, length, trial).
 
     Attributes
     ----------
@@ -71,10 +79,108 @@ class Moments:
     wind: Any
     log_determinant: Any
 
+    def trial(self, m: int) -> Moments:
+        """Return the moments of one trial only, its axis kept."""
+        return Moments(
+            [[_one(x, m) for x in row] for row in self.gram],
+            [_one(x, m) for x in self.rhs],
+            self.wind,
+            self.log_determinant,
+        )
 
-def basis_moments(data: Profiles, delta: Any, length: Any, tangent: bool = True) -> Moments:
+
+@dataclass
+class Whitening:
     """
-    Sum the moments of profiles for trial scale heights and noise lengths.
+    The noise of some lengths, as weights of the levels.
+
+    Attributes
+    ----------
+    columns : array, shape (profile, 4 length, level)
+        Q times 1, x, u and v.
+    diagonals : array, shape (profile, 2 length, level)
+        The main diagonal of Q, and the one below.
+    plain : array, shape (profile, 4, length, 4)
+        Inner products of 1, x, u and v.
+    log_determinant : array, shape (profile, length)
+        Logarithm of the determinant of the correlation matrix.
+    """
+
+    columns: Any
+    diagonals: Any
+    plain: Any
+    log_determinant: Any
+
+
+def profiles_of(z: Any, u: Any, v: Any, count: Any, unit: Any) -> Profiles:
+    """
+    Fill compact levels up to whole parts.
+
+    Parameters
+    ----------
+    z, u, v : array, shape (profile, level)
+        Heights and wind, in their order, NaN beyond ``count``. [m], [m s-1]
+    count, unit : array, shape (profile,)
+        As in :class:`Profiles`.
+    """
+    there = np.arange(z.shape[1]) < count[:, np.newaxis]
+    filled = np.zeros((3, len(z), _borders(z.shape[1])[-1]))
+    for place, x in enumerate((z, u, v)):
+        filled[place, :, : z.shape[1]] = np.where(there, x, 0.0)
+    return Profiles(filled[0], filled[1] + 1j * filled[2], count, unit)
+
+
+def whiten(data: Profiles, length: Any) -> Whitening:
+    """
+    Work out the weights of the levels under noise of some lengths.
+
+    Parameters
+    ----------
+    data
+        The profiles.
+    length : array, shape (profile, length)
+        Noise length; 0 for independent noise. [m]
+    """
+    count, width = data.z.shape
+    lengths = length.shape[1]
+    columns = np.empty((count, 4, lengths, width))
+    diagonals = np.zeros((count, 2, lengths, width))
+    plain = np.empty((count, 4 * lengths, 4))
+    log_determinant = np.empty((count, lengths))
+    for rows in _slices(count, width * lengths):
+        z = data.z[rows]
+        there = np.arange(width) < data.count[rows, np.newaxis]
+        gap = np.full(z.shape, np.inf)
+        gap[:, 1:] = np.where(there[:, 1:], z[:, 1:] - z[:, :-1], np.inf)
+        span = length[rows, :, np.newaxis]
+        rho = np.exp(-gap[:, np.newaxis] / np.where(span > 0, span, 1.0))
+        rho = np.where(span > 0, rho, 0.0)
+        rest = (1.0 - rho) * (1.0 + rho)
+        log_determinant[rows] = np.add.accumulate(np.log(rest), axis=-1)[..., -1]
+        q = np.where(there[:, np.newaxis], 1.0 / rest, 0.0)
+        y = np.stack([there + 0.0, z / data.unit[rows, np.newaxis], *_parts(data.w[rows])], axis=1)
+        # Q y, one step of whitening down and one back up.
+        step = np.repeat(y[:, :, np.newaxis], lengths, axis=2)
+        rise = rho[:, np.newaxis, :, 1:]
+        step[..., 1:] -= rise * y[:, :, np.newaxis, :-1]
+        step *= q[:, np.newaxis]
+        columns[rows] = step
+        columns[rows, ..., :-1] -= rise * step[..., 1:]
+        diagonals[rows, 0] = q
+        diagonals[rows, 0, :, :-1] += rho[..., 1:] ** 2 * q[..., 1:]
+        diagonals[rows, 1] = -rho * q
+        plain[rows] = _product(columns[rows].reshape(len(z), 4 * lengths, width), y)
+    return Whitening(
+        columns.reshape(count, 4 * lengths, width),
+        diagonals.reshape(count, 2 * lengths, width),
+        plain.reshape(count, 4, lengths, 4),
+        log_determinant,
+    )
+
+
+def basis_moments(data: Profiles, delta: Any, *noise: Whitening) -> list[Moments]:
+    """
+    Sum the moments of profiles for trial scale heights, under each noise.
 
     Parameters
     ----------
@@ -82,84 +188,163 @@ def basis_moments(data: Profiles, delta: Any, length: Any, tangent: bool = True)
         The profiles.
     delta : array, shape (profile, trial)
         Scale height. [m]
-    length : array, shape (profile, trial) or (profile, 1)
-        Noise length; 0 for independent noise. [m]
-    tangent
-        Sum also what the column x e needs; without it its moments are zero.
+    *noise
+        From :func:`whiten`.
     """
-    z, w, count, unit = data
-    rate = 1.0 / delta
-    narrow, wide = length.shape, np.broadcast_shapes(delta.shape, length.shape)
-    one_one, one_x, x_x = (np.zeros(narrow) for _ in range(3))
-    one_w, x_w = np.zeros(narrow, dtype=complex), np.zeros(narrow, dtype=complex)
-    w_w, log_determinant = np.zeros(narrow), np.zeros(narrow)
-    # Real and imaginary parts of the sums with e (c, s) and with x e (p, q).
-    one_c, one_s, x_c, x_s, e_e, wc, ws = (np.zeros(wide) for _ in range(7))
-    one_p, one_q, x_p, x_q, t_t, ec, es, wp, wq = (np.zeros(wide) for _ in range(9))
-    correlated = bool((length > 0).any())
-    safe_length = np.where(length > 0, length, 1.0)
-    c0 = s0 = p0 = q0 = np.zeros(wide)
-    x0 = u0 = v0 = below = np.zeros_like(z[:, :1])
-    with np.errstate(under="ignore"):
-        for i in range(z.shape[1]):
-            there = (i < count)[:, np.newaxis]
-            height = np.where(there, z[:, i : i + 1], 0.0)
-            u = np.where(there, w.real[:, i : i + 1], 0.0)
-            v = np.where(there, w.imag[:, i : i + 1], 0.0)
-            x = height / unit[:, np.newaxis]
-            phase = height * rate
-            size = np.exp(-phase)
-            c, s = size * np.cos(phase), -size * np.sin(phase)
-            if correlated and i > 0:
-                gap = np.where(there, height - below, 0.0)
-                rho = np.where(there & (length > 0), np.exp(-gap / safe_length), 0.0)
-                rest = (1.0 - rho) * (1.0 + rho)
-                weight = np.where(there, 1.0 / np.sqrt(rest), 0.0)
-                log_determinant += np.log(rest)
-                one_ = (1.0 - rho) * weight
-                x_ = (x - rho * x0) * weight
-                u_, v_ = (u - rho * u0) * weight, (v - rho * v0) * weight
-                c_, s_ = (c - rho * c0) * weight, (s - rho * s0) * weight
-            else:
-                one_ = np.where(there, np.ones(narrow), 0.0)
-                x_, u_, v_ = x * one_, u * one_, v * one_
-                c_, s_ = c * one_, s * one_
-            one_one += one_ * one_
-            one_x += one_ * x_
-            x_x += x_ * x_
-            one_w += one_ * (u_ + 1j * v_)
-            x_w += x_ * (u_ + 1j * v_)
-            w_w += u_ * u_ + v_ * v_
-            one_c += one_ * c_
-            one_s += one_ * s_
-            x_c += x_ * c_
-            x_s += x_ * s_
-            e_e += c_ * c_ + s_ * s_
-            wc += c_ * u_ + s_ * v_
-            ws += c_ * v_ - s_ * u_
-            if tangent:
-                p, q = x * c, x * s
-                if correlated and i > 0:
-                    p_, q_ = (p - rho * p0) * weight, (q - rho * q0) * weight
-                else:
-                    p_, q_ = p * one_, q * one_
-                one_p += one_ * p_
-                one_q += one_ * q_
-                x_p += x_ * p_
-                x_q += x_ * q_
-                t_t += p_ * p_ + q_ * q_
-                ec += c_ * p_ + s_ * q_
-                es += c_ * q_ - s_ * p_
-                wp += p_ * u_ + q_ * v_
-                wq += p_ * v_ - q_ * u_
-                p0, q0 = p, q
-            c0, s0, x0, u0, v0, below = c, s, x, u, v, height
-    one_e, x_e, e_w = one_c + 1j * one_s, x_c + 1j * x_s, wc + 1j * ws
-    one_t, x_t, e_t, t_w = one_p + 1j * one_q, x_p + 1j * x_q, ec + 1j * es, wp + 1j * wq
+    count, width = data.z.shape
+    trials = delta.shape[1]
+    first = [np.empty((count, n.columns.shape[1], 4 * trials)) for n in noise]
+    second = [np.empty((count, n.diagonals.shape[1], 7 * trials)) for n in noise]
+    for rows in _slices(count, width * trials):
+        z = data.z[rows, np.newaxis]
+        x = z / data.unit[rows, np.newaxis, np.newaxis]
+        linear = np.empty((len(z), 4, trials, width))
+        c, s, p, q = (linear[:, k] for k in range(4))
+        _decay(z, delta[rows, :, np.newaxis], c, s)
+        np.multiply(x, c, out=p)
+        np.multiply(x, s, out=q)
+        # Squares of e, and of e with e at the level below; each also with x.
+        square = np.zeros((len(z), 7, trials, width))
+        e2, xe2, xxe2 = (square[:, k] for k in range(3))
+        np.multiply(c, c, out=e2)
+        e2 += s * s
+        np.multiply(x, e2, out=xe2)
+        np.multiply(x, xe2, out=xxe2)
+        real, x_real, xx_real, x_imaginary = (square[:, k, :, 1:] for k in range(3, 7))
+        np.multiply(c[..., 1:], c[..., :-1], out=real)
+        real += s[..., 1:] * s[..., :-1]
+        np.multiply(x[..., 1:] + x[..., :-1], real, out=x_real)
+        np.multiply(x[..., 1:] * x[..., :-1], real, out=xx_real)
+        np.multiply(c[..., 1:], s[..., :-1], out=x_imaginary)
+        x_imaginary -= s[..., 1:] * c[..., :-1]
+        x_imaginary *= x[..., :-1] - x[..., 1:]
+        for n, one, two in zip(noise, first, second, strict=True):
+            one[rows] = _product(n.columns[rows], linear.reshape(len(z), 4 * trials, width))
+            two[rows] = _product(n.diagonals[rows], square.reshape(len(z), 7 * trials, width))
+    return [
+        _assemble(
+            n,
+            one.reshape(count, 4, n.log_determinant.shape[1], 4, trials),
+            two.reshape(count, 2, n.log_determinant.shape[1], 7, trials),
+        )
+        for n, one, two in zip(noise, first, second, strict=True)
+    ]
+
+
+def coarse_moments(data: Profiles, largest: Any, halvings: int, noise: Whitening) -> Moments:
+    """
+    Sum the moments for a shared row of scale heights under independent noise, without the tangent.
+
+    Parameters
+    ----------
+    data
+        The profiles.
+    largest : array, shape (few,)
+        The largest scale heights, increasing. [m]
+    halvings : int
+        How often they are halved: the decay for half a scale height is the square of that for the
+        whole, which spares nearly all of the exponentials.
+    noise
+        From :func:`whiten`, of length 0.
+
+    Returns
+    -------
+    Moments
+        Trials in increasing order.
+    """
+    count, width = data.z.shape
+    few = len(largest)
+    trials = few * (halvings + 1)
+    sums = np.empty((count, 4, 3 * trials))
+    for rows in _slices(count, width * trials):
+        z = data.z[rows, np.newaxis]
+        columns = np.empty((len(z), 3, trials, width))
+        c, s, e2 = (columns[:, k] for k in range(3))
+        _decay(z, largest[:, np.newaxis], c[:, -few:], s[:, -few:])
+        for start in range(trials - 2 * few, -1, -few):
+            half, whole = slice(start, start + few), slice(start + few, start + 2 * few)
+            np.multiply(c[:, whole], c[:, whole], out=c[:, half])
+            c[:, half] -= s[:, whole] * s[:, whole]
+            np.multiply(c[:, whole], s[:, whole], out=s[:, half])
+            s[:, half] *= 2.0
+        np.multiply(c, c, out=e2)
+        e2 += s * s
+        sums[rows] = _product(noise.columns[rows], columns.reshape(len(z), 3 * trials, width))
+    by = sums.reshape(count, 4, 1, 3, trials)
+    linear = np.zeros((count, 4, 1, 4, trials))
+    linear[:, :, :, :2] = by[:, :, :, :2]
+    square = np.zeros((count, 2, 1, 7, trials))
+    square[:, 0, :, 0] = by[:, 0, :, 2]
+    return _assemble(noise, linear, square)
+
+
+def _decay(z: Any, delta: Any, c: Any, s: Any) -> None:
+    """Put the real and imaginary part of exp(-(1 + i) z / delta) into c and s."""
+    phase = z / delta
+    size = np.exp(-phase)
+    np.cos(phase, out=c)
+    c *= size
+    np.sin(phase, out=s)
+    s *= -size
+
+
+def _parts(w: Any) -> tuple[Any, Any]:
+    return w.real, w.imag
+
+
+def _assemble(noise: Whitening, linear: Any, square: Any) -> Moments:
+    """Put the sums together: (profile, 4, length, 4, trial) and (profile, 2, length, 7, trial)."""
+    one, x, u, v = (linear[:, k] for k in range(4))
+    one_e, x_e = one[:, :, 0] + 1j * one[:, :, 1], x[:, :, 0] + 1j * x[:, :, 1]
+    one_t, x_t = one[:, :, 2] + 1j * one[:, :, 3], x[:, :, 2] + 1j * x[:, :, 3]
+    e_w = (u[:, :, 0] + v[:, :, 1]) + 1j * (v[:, :, 0] - u[:, :, 1])
+    t_w = (u[:, :, 2] + v[:, :, 3]) + 1j * (v[:, :, 2] - u[:, :, 3])
+    main, below = square[:, 0], square[:, 1]
+    e_e = main[:, :, 0] + 2.0 * below[:, :, 3]
+    e_t = main[:, :, 1] + below[:, :, 4] + 1j * below[:, :, 6]
+    t_t = main[:, :, 2] + 2.0 * below[:, :, 5]
+    plain = noise.plain[..., np.newaxis]
+    one_one, one_x, x_x = plain[:, 0, :, 0], plain[:, 0, :, 1], plain[:, 1, :, 1]
+    one_w = plain[:, 0, :, 2] + 1j * plain[:, 0, :, 3]
+    x_w = plain[:, 1, :, 2] + 1j * plain[:, 1, :, 3]
     gram = [
         [one_one + 0j, one_x + 0j, one_e, one_t],
         [one_x + 0j, x_x + 0j, x_e, x_t],
         [one_e.conj(), x_e.conj(), e_e + 0j, e_t],
         [one_t.conj(), x_t.conj(), e_t.conj(), t_t + 0j],
     ]
-    return Moments(gram, [one_w, x_w, e_w, t_w], w_w, log_determinant)
+    return Moments(
+        gram,
+        [one_w, x_w, e_w, t_w],
+        plain[:, 2, :, 2] + plain[:, 3, :, 3],
+        noise.log_determinant[..., np.newaxis],
+    )
+
+
+def _borders(levels: int) -> list[int]:
+    """Return the borders of the parts that hold so many levels; they never move."""
+    borders = [0]
+    for border in (*FIRST_BORDERS[1:], *range(PART, levels + PART, PART)):
+        if borders[-1] < levels:
+            borders.append(border)
+    return borders
+
+
+def _product(weights: Any, columns: Any) -> Any:
+    """Multiply (profile, row, level) with (profile, column, level), part by part of the levels."""
+    columns = columns.swapaxes(-1, -2)
+    borders = _borders(columns.shape[1])
+    total = weights[..., : borders[1]] @ columns[:, : borders[1]]
+    for start, end in itertools.pairwise(borders[1:]):
+        total += weights[..., start:end] @ columns[:, start:end]
+    return total
+
+
+def _slices(count: int, numbers: int) -> list[slice]:
+    """Cut the profiles, of so many numbers each, into pieces that the cache holds."""
+    size = max(1, CACHE // max(numbers, 1))
+    return [slice(start, start + size) for start in range(0, count, size)]
+
+
+def _one(x: Any, m: int) -> Any:
+    return x[..., m : m + 1] if x.shape[-1] > 1 else x

@@ -22,7 +22,10 @@ from backveer.profiles.ekman_moments import (
     TANGENT,
     Moments,
     Profiles,
+    Whitening,
     basis_moments,
+    coarse_moments,
+    whiten,
 )
 
 
@@ -58,13 +61,15 @@ WITHOUT_FRICTION = (
 )
 #: Trial scale heights: two to the octave, from well below any mast to far above any layer. [m]
 TRIALS = 15.0 * 2.0 ** (np.arange(20) / 2.0)
+PER_OCTAVE = 2
 SINGULAR = 1e-8  # a column that is this small beside itself after elimination is not there
-STEPS = 5  # Gauss-Newton steps after the parabola
+SURE = 0.02  # a step of ln(scale height) as short as this is taken on trust
+STEPS = 4  # after the parabola; the secant makes each square the error, or nearly
 
 
 @dataclass
 class Projection:
-    """A member's linear problem solved, arrays of shape (profile, trial)."""
+    """A member's linear problem solved, arrays of shape (profile, length, trial)."""
 
     residual: Any  # sum of squares of the whitened residual
     coefficients: list[Any]
@@ -78,8 +83,25 @@ class Projection:
 
 def project(moments: Moments, member: Member) -> Projection:
     """Eliminate the columns of a member from its normal equations, and the tangent column last."""
-    columns = [*member.columns, {TANGENT: 1.0}]
-    n, k = len(columns), len(member.columns)
+    k = len(member.columns)
+    gram, rhs, residual, sound, log_pivots = _eliminate(
+        moments, [*member.columns, {TANGENT: 1.0}], k
+    )
+    return Projection(
+        residual=residual,
+        coefficients=_back_substitute(gram, rhs[:k]),
+        inverse=_inverse(gram, k),
+        slope=_back_substitute(gram, [gram[j][k] for j in range(k)]),
+        tangent_size=np.maximum(gram[k][k].real, 0.0),
+        tangent_rhs=rhs[k],
+        log_pivots=log_pivots,
+        sound=sound,
+    )
+
+
+def _eliminate(moments: Moments, columns: list[dict[int, float]], k: int) -> tuple[Any, ...]:
+    """Eliminate the first k columns; what is left of the others stays in the lower corner."""
+    n = len(columns)
     gram, rhs = _combined(moments, columns)
     size = [gram[j][j].real for j in range(k)]
     residual = moments.wind + 0 * gram[0][0].real
@@ -98,18 +120,7 @@ def project(moments: Moments, member: Member) -> Projection:
                 gram[i][other] = gram[i][other] - factor * gram[j][other]
             rhs[i] = rhs[i] - factor * rhs[j]
         gram[j][j] = pivot + 0j
-    coefficients = _back_substitute(gram, rhs[:k])
-    slope = _back_substitute(gram, [gram[j][k] for j in range(k)])
-    return Projection(
-        residual=np.maximum(residual, 0.0),
-        coefficients=coefficients,
-        inverse=_inverse(gram, k),
-        slope=slope,
-        tangent_size=np.maximum(gram[k][k].real, 0.0),
-        tangent_rhs=rhs[k],
-        log_pivots=log_pivots,
-        sound=sound,
-    )
+    return gram, rhs, np.maximum(residual, 0.0), sound, log_pivots
 
 
 def _combined(moments: Moments, columns: list[dict[int, float]]) -> tuple[Any, Any]:
@@ -164,19 +175,31 @@ def _inverse(gram: Any, k: int) -> list[list[Any]]:
 
 
 def tangent(member: Member, projection: Projection, delta: Any, unit: Any) -> Any:
-    """Return the factor of the column x e in the derivative of the wind by ln delta."""
+    """Return the factor of x e in the derivative of the wind by ln delta, (profile, length, 1)."""
     amplitude = member.sign * projection.coefficients[member.decay]
-    return (1.0 + 1.0j) * (unit[:, np.newaxis] / delta) * amplitude
+    return (1.0 + 1.0j) * (unit / delta)[:, np.newaxis, np.newaxis] * amplitude
 
 
-def step(member: Member, projection: Projection, delta: Any, unit: Any) -> tuple[Any, Any]:
-    """Gauss-Newton step of ln delta, and the curvature of half the residual there."""
+def descent(member: Member, projection: Projection, delta: Any, unit: Any) -> tuple[Any, Any]:
+    """
+    Slope and Gauss-Newton curvature, by ln delta, of half the residual.
+
+    Parameters
+    ----------
+    member, projection
+        Which member, and its linear problem for one trial.
+    delta, unit : array, shape (profile,)
+        Scale height and height unit. [m]
+
+    Returns
+    -------
+    downhill, curvature : array, shape (profile, length)
+        The slope with its sign turned, exact; their ratio is the Gauss-Newton step.
+    """
     factor = tangent(member, projection, delta, unit)
     curvature = (factor.real**2 + factor.imag**2) * projection.tangent_size
-    slope = (factor.conj() * projection.tangent_rhs).real
-    with np.errstate(divide="ignore", invalid="ignore", over="ignore"):
-        move = slope / curvature
-    return np.where(np.isfinite(move), move, 0.0), curvature
+    downhill = (factor.conj() * projection.tangent_rhs).real
+    return downhill[..., 0], curvature[..., 0]
 
 
 def first_guess(data: Profiles) -> tuple[Any, Any]:
@@ -194,16 +217,17 @@ def first_guess(data: Profiles) -> tuple[Any, Any]:
         Scale height of the least residual [m], and whether it is no minimum inside the range.
     """
     trials = np.broadcast_to(TRIALS, (data.z.shape[0], TRIALS.size))
-    independent = np.zeros((data.z.shape[0], 1))
-    coarse = basis_moments(data, trials, independent, tangent=False)
+    independent = whiten(data, np.zeros((data.z.shape[0], 1)))
+    coarse = coarse_moments(data, TRIALS[-PER_OCTAVE:], TRIALS.size // PER_OCTAVE - 1, independent)
     log_delta = np.empty((data.z.shape[0], len(MEMBERS)))
     edge = np.zeros(log_delta.shape, dtype=bool)
     logs = np.log(TRIALS)
     ceiling = ceilings(data.unit)
     for m, member in enumerate(MEMBERS):
-        projection = project(coarse, member)
-        usable = projection.sound & (trials <= ceiling[:, m : m + 1])
-        residual = np.where(usable, projection.residual, np.inf)
+        columns = list(member.columns)
+        _, _, residual, sound, _ = _eliminate(coarse, columns, len(columns))
+        usable = sound[:, 0] & (trials <= ceiling[:, m : m + 1])
+        residual = np.where(usable, residual[:, 0], np.inf)
         best = np.argmin(residual, axis=-1)
         inner = np.clip(best, 1, TRIALS.size - 2)
         r = [np.take_along_axis(residual, (inner + k)[:, np.newaxis], -1)[:, 0] for k in (-1, 0, 1)]
@@ -229,16 +253,16 @@ def ceilings(reach: Any) -> Any:
     )
 
 
-def refine(data: Profiles, length: Any, start: Any) -> tuple[Any, list[Projection], list[Any]]:
+def refine(data: Profiles, noise: Whitening, start: Any) -> Any:
     """
-    Take Gauss-Newton steps, each kept only where it lowers the residual, halved where it does not.
+    Descend to the least whitened residual, each step kept only where it lowers it.
 
     Parameters
     ----------
     data
         The profiles.
-    length : array, shape (profile, 1)
-        Noise length. [m]
+    noise
+        Of one length a profile, from :func:`backveer.profiles.ekman_moments.whiten`.
     start : array, shape (profile, member)
         Scale heights to start from. [m]
 
@@ -246,53 +270,41 @@ def refine(data: Profiles, length: Any, start: Any) -> tuple[Any, list[Projectio
     -------
     delta : array, shape (profile, member)
         Scale heights of the least whitened residual. [m]
-    projections : list
-        Each member's linear problem there.
-    without_friction : list
-        Whitened residual of a constant and of a linear wind, each of shape (profile,).
+
+    Notes
+    -----
+    The first step is that of Gauss and Newton; the next ones take the curvature from the change of
+    the slope, which is exact, since the last point (the secant), where that is of the same order.
+    A step that does not help is halved.
     """
     floor, roof = np.log(TRIALS[0]), np.log(np.minimum(ceilings(data.unit), TRIALS[-1]))
     best = trial = np.clip(np.log(start), floor, roof)
     least = np.full(start.shape, np.inf)
-    move = np.zeros(start.shape)
+    move, last_slope = np.zeros(start.shape), np.full(start.shape, np.nan)
     for _ in range(STEPS):
-        residual, moves = np.empty(start.shape), np.empty(start.shape)
-        projections, _ = _all_members(data, np.exp(trial), length)
-        for m, (member, projection) in enumerate(zip(MEMBERS, projections, strict=True)):
-            gauss_newton, _ = step(member, projection, np.exp(trial[:, m : m + 1]), data.unit)
-            residual[:, m] = np.where(projection.sound, projection.residual, np.inf)[:, 0]
-            moves[:, m] = np.clip(gauss_newton[:, 0], -0.5, 0.5)
+        residual, slope, curvature = (np.empty(start.shape) for _ in range(3))
+        (sums,) = basis_moments(data, np.exp(trial), noise)
+        for m, member in enumerate(MEMBERS):
+            one = project(sums.trial(m), member)
+            residual[:, m] = np.where(one.sound, one.residual, np.inf)[:, 0, 0]
+            downhill, bend = descent(member, one, np.exp(trial[:, m]), data.unit)
+            slope[:, m], curvature[:, m] = downhill[:, 0], bend[:, 0]
+        secant = (last_slope - slope) / (trial - best)
+        like = (secant > 0.3 * curvature) & (secant < 3.0 * curvature)
+        with np.errstate(divide="ignore", invalid="ignore", over="ignore"):
+            ahead = np.clip(slope / np.where(like, secant, curvature), -0.5, 0.5)
         better = residual < least
+        move = np.where(better, np.where(np.isfinite(ahead), ahead, 0.0), 0.5 * move)
         best, least = np.where(better, trial, best), np.where(better, residual, least)
-        move = np.where(better, moves, 0.5 * move)
+        last_slope = np.where(better, slope, last_slope)
         trial = np.clip(best + move, floor, roof)
-    delta = np.exp(best)
-    projections, sums = _all_members(data, delta, length)
-    narrow = Moments(
-        [[_column(x, 0) for x in row] for row in sums.gram],
-        [_column(x, 0) for x in sums.rhs],
-        sums.wind,
-        sums.log_determinant,
-    )
-    return delta, projections, [project(narrow, null).residual[:, 0] for null in WITHOUT_FRICTION]
+    # The last step is not tried any more, and taken only where nothing can go wrong.
+    return np.exp(np.where(better & (np.abs(trial - best) < SURE), trial, best))
 
 
-def _all_members(data: Profiles, delta: Any, length: Any) -> tuple[list[Projection], Moments]:
-    sums = basis_moments(data, delta, length)
-    projections = [
-        project(
-            Moments(
-                [[_column(x, m) for x in row] for row in sums.gram],
-                [_column(x, m) for x in sums.rhs],
-                sums.wind,
-                sums.log_determinant,
-            ),
-            member,
-        )
-        for m, member in enumerate(MEMBERS)
+def without_friction(moments: Moments) -> list[Any]:
+    """Whitened residual of a constant and of a linear wind, each of shape (profile,)."""
+    return [
+        _eliminate(moments.trial(0), list(null.columns), len(null.columns))[2][:, 0, 0]
+        for null in WITHOUT_FRICTION
     ]
-    return projections, sums
-
-
-def _column(x: Any, m: int) -> Any:
-    return x[:, m : m + 1] if x.shape[1] > 1 else x
