@@ -19,9 +19,9 @@ from typing import Any
 
 import numpy as np
 
-from backveer.profiles.grid import at_height, compact
 from backveer.profiles.labels import Floats, Labelled, Words, variable
 from backveer.profiles.low_level_shear import FOOT, STEP, TOP
+from backveer.profiles.low_levels import low_levels
 from backveer.profiles.sliding_layer import layer_differences
 from backveer.profiles.stack import Stack
 
@@ -183,19 +183,9 @@ def flight_path(
         raise ValueError("ground speed, glide slope and climb slope must be positive")
     headings = np.atleast_1d(np.asarray(headings, dtype=float))
     usable = stack.usable("wind")
-    z = np.where(usable, stack.height, np.nan)
     u = np.where(usable, stack.eastward_wind, np.nan)
     v = np.where(usable, stack.northward_wind, np.nan)
-
-    wind: Any = u + 1j * v
-    cut: Any = at_height(z, wind, [top])
-    with np.errstate(invalid="ignore"):
-        below = usable & (z < top)
-    count, z_path, w = compact(
-        np.concatenate([below, np.isfinite(cut)], axis=-1),
-        np.concatenate([z, np.full_like(cut.real, top)], axis=-1),
-        np.concatenate([wind, cut], axis=-1),
-    )
+    count, z_path, w = low_levels(stack, top)
     enough = (count >= 2)[:, np.newaxis]
     path = _along(w, headings)
     worst, worst_base, worst_top = _steepest(z_path, w, headings, step)

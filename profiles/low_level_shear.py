@@ -11,15 +11,16 @@ is a lower bound and is marked as one. Along a flight path see
 
 from __future__ import annotations
 
-from dataclasses import dataclass
+from dataclasses import dataclass, replace
 from typing import Any
 
 import numpy as np
 
-from backveer.profiles.grid import at_height, compact
+from backveer.profiles.grid import at_height
 from backveer.profiles.labels import Bools, Floats, Labelled, Words, variable
+from backveer.profiles.low_levels import low_levels
 from backveer.profiles.sliding_layer import measured_between, strongest_layer
-from backveer.profiles.stack import Stack, wind_from_direction
+from backveer.profiles.stack import Stack
 
 FOOT = 0.3048  # m, exact: ISO 80000-3:2019, annex B
 KNOT = 1852.0 / 3600.0  # m s-1, exact: ISO 80000-3:2019, annex B
@@ -154,44 +155,23 @@ def low_level_shear(
     intensity are for 100 ft: the shear to go by is ``window_shear``. Where the levels span less
     than a step it is not determined.
     """
-    usable = stack.usable("wind")
-    z = np.where(usable, stack.height, np.nan)
-    u, v = stack.eastward_wind, stack.northward_wind
-    w = np.where(usable, u + 1j * v, np.nan)
-
-    below = usable & (stack.height <= top)
-    cut = at_height(z, w, [top])
-    count, z_pair, w_pair = compact(
-        np.concatenate([below, np.isfinite(cut)], axis=-1),
-        np.concatenate([z, np.full_like(cut.real, top)], axis=-1),
-        np.concatenate([w, cut], axis=-1),
-    )
-    # A level exactly at the top would make a layer of no depth with the cut.
-    base, roof = z_pair[..., :-1], z_pair[..., 1:]
-    with np.errstate(invalid="ignore"):
-        there = roof > base
-    pair = _difference(
-        np.where(there, base, np.nan),
-        np.where(there, roof, np.nan),
-        np.where(there, w_pair[..., :-1], np.nan),
-        np.where(there, w_pair[..., 1:], np.nan),
-        error,
-    )
+    count, z, w = low_levels(stack, top)
+    pair = _difference(z[..., :-1], z[..., 1:], w[..., :-1], w[..., 1:], error)
 
     edges = np.arange(0.0, top + 0.5 * step, step)
-    lowest = z_pair[..., :1]
+    lowest = z[..., :1]
     # The lowest step begins at the lowest level, if that lies in it: nobody measures at the ground.
     bases = np.broadcast_to(edges[:-1], (stack.profile_count, edges.size - 1))
     with np.errstate(invalid="ignore"):
         bases = np.where((lowest > bases) & (lowest < edges[1:]), lowest, bases)
     tops = np.broadcast_to(edges[1:], bases.shape)
-    fixed = _difference(bases, tops, at_height(z, w, bases), at_height(z, w, tops), error, z_pair)
+    # Steps above all profiles are known to be missing.
+    reached = int(np.count_nonzero(edges[:-1] < np.fmax.reduce(z, axis=None, initial=-1.0)))
+    fixed = _between(bases[:, :reached], tops[:, :reached], z, w, error).padded(bases.shape[1])
     missing = ~np.isfinite(fixed.shear)
-    coarse = measured_between(z_pair, bases, tops)[2] > step * (1 + 1e-9)
 
-    low, high = (end[..., np.newaxis] for end in strongest_layer(z_pair, w_pair, step)[:2])
-    window = _difference(low, high, at_height(z, w, low), at_height(z, w, high), error, z_pair)
-    under, over, widest, _ = measured_between(z_pair, low, high)
+    low, high = (end[..., np.newaxis] for end in strongest_layer(z, w, step)[:2])
+    window = _between(low, high, z, w, error)
     seen = np.isfinite(window.shear[..., 0])
 
     surface = np.where(lowest[..., 0] <= SURFACE_LIMIT, lowest[..., 0], np.nan)
@@ -199,7 +179,7 @@ def low_level_shear(
     reach = _difference(
         np.broadcast_to(surface[..., np.newaxis], (stack.profile_count, heights.size)),
         np.broadcast_to(heights, (stack.profile_count, heights.size)),
-        np.where(np.isfinite(surface), w_pair[..., 0], np.nan)[..., np.newaxis],
+        np.where(np.isfinite(surface), w[..., 0], np.nan)[..., np.newaxis],
         at_height(z, w, heights),
         error,
     )
@@ -209,7 +189,6 @@ def low_level_shear(
         shear = np.full((stack.profile_count, 1), -1.0)
     strongest = np.argmax(shear, axis=-1)[..., np.newaxis]
     found = np.take_along_axis(shear, strongest, -1)[..., 0] >= 0
-    levels = np.count_nonzero(below, axis=-1)
 
     def of_strongest(array: Any, missing: Any) -> Any:
         if array.shape[-1] == 0:
@@ -236,7 +215,7 @@ def low_level_shear(
         step_direction_change=fixed.turn,
         step_error=fixed.error,
         step_intensity=fixed.intensity,
-        step_lower_bound=coarse & ~missing,
+        step_lower_bound=(fixed.widest > step * (1 + 1e-9)) & ~missing,
         surface_height=surface,
         surface_why=_surface_why(count, lowest[..., 0]),
         reach_height=np.where(np.isfinite(reach.shear), reach.top, np.nan),
@@ -253,15 +232,15 @@ def low_level_shear(
         window_direction_change=window.turn[..., 0],
         window_error=window.error[..., 0],
         window_intensity=window.intensity[..., 0],
-        window_lower_bound=seen & (widest[..., 0] > step * (1 + 1e-9)),
-        window_measured_base=np.where(seen, under[..., 0], np.nan),
-        window_measured_top=np.where(seen, over[..., 0], np.nan),
+        window_lower_bound=seen & (window.widest[..., 0] > step * (1 + 1e-9)),
+        window_measured_base=np.where(seen, window.below[..., 0], np.nan),
+        window_measured_top=np.where(seen, window.above[..., 0], np.nan),
         maximum_error=of_strongest(pair.error, np.nan),
         maximum_shear=np.where(found, np.take_along_axis(shear, strongest, -1)[..., 0], np.nan),
         maximum_base=of_strongest(pair.base, np.nan),
         maximum_top=of_strongest(pair.top, np.nan),
         maximum_intensity=of_strongest(pair.intensity, ""),
-        why=_why(levels, found, top),
+        why=_why(count, found, top),
         top=float(top),
         step=float(step),
     )
@@ -299,7 +278,7 @@ def intensity(shear: Floats, error: Floats) -> Words:
 
 @dataclass(frozen=True)
 class _Difference:
-    """Top minus base of layers, each array of the layers' shape."""
+    """Top minus base of layers, each array of the layers' shape; where they were measured."""
 
     base: Floats
     top: Floats
@@ -309,34 +288,51 @@ class _Difference:
     turn: Floats
     error: Floats
     intensity: Words
+    below: Floats
+    above: Floats
+    widest: Floats
+
+    def padded(self, count: int) -> _Difference:
+        """Return the same with missing layers up to ``count``."""
+        more = count - self.base.shape[-1]
+        wide = [(0, 0), (0, more)]
+        return _Difference(
+            **{
+                name: np.pad(array, wide, constant_values="" if array.dtype == object else np.nan)
+                for name, array in vars(self).items()
+            }
+        )
+
+
+def _between(base: Floats, top: Floats, z: Floats, w: Any, error: Floats) -> _Difference:
+    """Differences over layers whose ends lie between levels."""
+    below, above, widest, inside = measured_between(z, base, top)
+    with np.errstate(invalid="ignore", over="ignore"):
+        known = top - base
+        # Between two neighbours the shear, and so its error, is that of the neighbours.
+        known = np.where(inside, known, np.fmax(known, above - below))
+    ends = at_height(z, w, np.concatenate([base, top], axis=-1))
+    w_base, w_top = ends[..., : base.shape[-1]], ends[..., base.shape[-1] :]
+    told = _difference(base, top, w_base, w_top, error, known)
+    return replace(told, below=below, above=above, widest=widest)
 
 
 def _difference(
-    base: Floats,
-    top: Floats,
-    w_base: Floats,
-    w_top: Floats,
-    error: Floats,
-    levels: Floats | None = None,
+    base: Floats, top: Floats, w_base: Any, w_top: Any, error: Floats, known: Floats | None = None
 ) -> _Difference:
-    """Differences over layers; ``levels`` where the ends were interpolated between them."""
-    with np.errstate(invalid="ignore", over="ignore"):
-        known = top - base
-        if levels is not None:
-            below, above, _, inside = measured_between(levels, base, top)
-            known = np.where(inside, known, np.fmax(known, above - below))
+    """Differences over layers; ``known`` is the depth that divides the error, if not theirs."""
     with np.errstate(invalid="ignore", divide="ignore", over="ignore"):
         depth = top - base
         size = np.abs(w_top - w_base)
         shear = size / depth
-        turn = (
-            wind_from_direction(w_top.real, w_top.imag)
-            - wind_from_direction(w_base.real, w_base.imag)
-            + 180.0
-        ) % 360.0 - 180.0
-        spread = np.where(np.isfinite(shear), np.sqrt(2.0) * error[..., np.newaxis] / known, np.nan)
+        # Clockwise is negative in the complex plane and positive on the compass.
+        turn = np.degrees(np.angle(w_base * np.conj(w_top)))
+        turn = np.where((w_base == 0) | (w_top == 0), np.nan, turn)
+        spread = np.sqrt(2.0) * error[..., np.newaxis] / (depth if known is None else known)
+        spread = np.where(np.isfinite(shear), spread, np.nan)
         speed = np.abs(w_top) - np.abs(w_base)
-    return _Difference(base, top, shear, size, speed, turn, spread, intensity(shear, spread))
+    term = intensity(shear, spread)
+    return _Difference(base, top, shear, size, speed, turn, spread, term, base, top, depth)
 
 
 def _deeper(top: Floats, base: Floats, step: float) -> Bools:

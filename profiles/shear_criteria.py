@@ -18,13 +18,14 @@ A rule names a metric, the layer in which it is taken, and a threshold. The metr
 from __future__ import annotations
 
 from dataclasses import dataclass
+from typing import Any
 
 import numpy as np
 
 from backveer.profiles.flight_path import headwind
-from backveer.profiles.grid import at_height, compact
 from backveer.profiles.labels import Bools, Floats, Labelled, Words, variable
 from backveer.profiles.low_level_shear import FOOT, SURFACE_LIMIT
+from backveer.profiles.low_levels import low_levels
 from backveer.profiles.sliding_layer import measured_between, strongest_layer
 from backveer.profiles.stack import Stack
 
@@ -116,12 +117,13 @@ def judge(
         For a metric that is not known.
     """
     values, errors, spans, reasons = [], [], [], []
+    levels = {top: low_levels(stack, top) for top in dict.fromkeys(rule.top for rule in rules)}
     for rule in rules:
         if rule.metric not in METRICS:
             raise ValueError(
                 f"rule {rule.name!r} has the metric {rule.metric!r}. Use {', '.join(METRICS)}."
             )
-        value, depth, span, why = _measure(stack, rule, headings)
+        value, depth, span, why = _measure(levels[rule.top], rule, headings)
         values.append(value)
         errors.append(np.where(np.isfinite(value), np.sqrt(2.0) * error / depth, np.nan))
         spans.append(span)
@@ -149,25 +151,15 @@ def judge(
 
 
 def _measure(
-    stack: Stack, rule: Rule, headings: Floats | None
+    levels: tuple[Any, Floats, Any], rule: Rule, headings: Floats | None
 ) -> tuple[Floats, Floats, Words, Words]:
     """Value, the depth that divides its error, what the winds do not span, why there is none."""
-    usable = stack.usable("wind")
-    z = np.where(usable, stack.height, np.nan)
-    w = np.where(usable, stack.eastward_wind + 1j * stack.northward_wind, np.nan)
-    cut = at_height(z, w, [rule.top])
-    with np.errstate(invalid="ignore"):
-        below = usable & (z < rule.top)
-    count, z, w = compact(
-        np.concatenate([below, np.isfinite(cut)], -1),
-        np.concatenate([z, np.full_like(cut.real, rule.top)], -1),
-        np.concatenate([w, cut], -1),
-    )
+    count, z, w = levels
     why = np.where(
         count < 2, f"there are fewer than two usable winds up to {_feet(rule.top)}", ""
     ).astype(object)
     span = _not_spanned(count, z, rule.top)
-    whole = np.ones(stack.profile_count)
+    whole = np.ones(count.shape)
     if rule.metric == "shear":
         base, top, difference = strongest_layer(z, w, rule.depth)
         with np.errstate(invalid="ignore", divide="ignore", over="ignore"):

@@ -50,13 +50,12 @@ def layer_differences(z: Floats, x: Any, depth: float) -> tuple[Floats, Floats, 
             base, top, difference = z[..., :-1], z[..., 1:], x[..., 1:] - x[..., :-1]
             return base, top, np.where(top > base, difference, np.nan)
     with np.errstate(invalid="ignore", over="ignore"):
-        above = at_height(z, x, z + depth) - x
-        below = x - at_height(z, x, z - depth)
-    return (
-        np.concatenate([z, z - depth], axis=-1),
-        np.concatenate([z + depth, z], axis=-1),
-        np.concatenate([above, below], axis=-1),
-    )
+        base = np.concatenate([z, z - depth], axis=-1)
+        top = np.concatenate([z + depth, z], axis=-1)
+        others: Any = at_height(z, x, np.concatenate([z + depth, z - depth], axis=-1))
+        count = z.shape[-1]
+        difference = np.concatenate([others[..., :count] - x, x - others[..., count:]], axis=-1)
+    return base, top, difference
 
 
 def strongest_layer(z: Floats, x: Any, depth: float) -> tuple[Floats, Floats, Any]:
