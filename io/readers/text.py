@@ -20,6 +20,7 @@ from backveer.io.readers.assembly import Assembly, Mixed, NewHeader
 from backveer.io.readers.cells import MISSING, column, words
 from backveer.io.readers.encoding import to_utf8
 from backveer.io.readers.errors import NotATable, ReadError
+from backveer.io.readers.height_row import heights_into_names
 from backveer.io.readers.layout import Found, Layout, find
 from backveer.io.readers.preamble import uncommented
 from backveer.io.readers.table import Table
@@ -58,7 +59,7 @@ def read_tables(source: str, data: bytes, *, nameless: bool = False) -> list[Tab
         text, encoding = to_utf8(data)
         if b"\r" in text and (len(text) <= LARGE or text.count(b"\r") != text.count(b"\r\n")):
             text = text.replace(b"\r\n", b"\n").replace(b"\r", b"\n")
-        return _File(source, text, encoding, nameless).tables()
+        return _File(source, heights_into_names(text), encoding, nameless).tables()
     except ReadError as error:
         error.source = error.source or source
         raise
