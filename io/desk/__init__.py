@@ -6,7 +6,8 @@ units, numbers; never a path.
 
 Modules
 -------
-session   what a browser has open: uploads in a private place, their hints and answers
-answer    from an upload and what was said about it to what the page shows
-server    the routes, and who may ask
+answer   From an upload and what was said about it to what the page shows
+server   the routes of the desk, and who may ask
+session  what one browser has open: uploads in a private temporary place, gone when the desk
+         closes
 """

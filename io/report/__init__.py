@@ -3,5 +3,5 @@ One self-contained page of a statement, which opens from a file without a networ
 
 Modules
 -------
-page   builds and writes the page
+page  the report: a statement as one self-contained page
 """

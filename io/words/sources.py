@@ -98,7 +98,7 @@ SOURCES = (
             "Burnham, K. P., and D. R. Anderson, 2002: Model Selection and Multimodel Inference, "
             "2nd ed. Springer, ch. 4",
         ),
-        ("ekman_errors", "ekman_parameters", "ekman_verdict"),
+        ("ekman_errors", "ekman_intervals", "ekman_parameters", "ekman_verdict"),
     ),
     Source(
         "geostrophic wind of the free air; departure",
