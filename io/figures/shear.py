@@ -119,7 +119,7 @@ def _layers(ax: Axes, one: ShearStatement, units: Units) -> None:
         + [float(np.nan_to_num(shear.window_shear[0])), 14 * KNOT_PER_100_FEET]
     )
     limits = [bound * KNOT_PER_100_FEET / size for _, bound in INTENSITY]
-    right = min(1.05 * largest / size, 4 * limits[-1])
+    right = min(1.05 * largest / size, 2.2 * limits[-1])
     ax.set_xlim(0, right)
     for n, (term, _) in enumerate(INTENSITY):
         if n:
@@ -330,6 +330,8 @@ def _nothing(ax: Axes, one: ShearStatement, runways: tuple[str, ...]) -> None:
 
 
 def _gain(change: float, units: Units) -> str:
+    if abs(change) < 0.5 * units.speed.size:
+        return "headwind the same"
     word = "gain" if change > 0 else "loss"
     return f"{word} of {plainly(abs(change), units.speed)} {units.speed.name}"
 

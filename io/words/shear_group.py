@@ -79,6 +79,7 @@ def candidate_groups(stack: Stack, wanted: Bools) -> tuple[Words, Floats]:
     for row in np.flatnonzero(known):
         wind = w[row, highest[row]]
         direction = float(wind_from_direction(wind.real, wind.imag))
-        if np.isfinite(direction):
+        # Beyond three figures no wind is one; a checked stack holds none.
+        if np.isfinite(direction) and np.abs(wind) < 999 * KNOT:
             groups[row] = group(float(heights[row]), direction, float(np.abs(wind)))
     return groups, heights
