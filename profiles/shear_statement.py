@@ -83,12 +83,6 @@ class ShearStatement:
         return replace(self, wind_error=self.wind_error[profiles], **chosen)
 
     @property
-    def of_concern(self) -> Bools:
-        """Profiles that meet a criterion, or whose strongest 100 ft are more than light."""
-        more = np.isin(self.shear.window_intensity, ("moderate", "strong", "severe"))
-        return more | self.any_met
-
-    @property
     def any_met(self) -> Bools:
         """Profiles that meet some criterion."""
         return np.asarray(np.any(self.criteria.met, axis=-1), dtype=np.bool_)

@@ -52,8 +52,7 @@ def shear_summary(said: ShearStatement, *, units: str = "aviation", longest: int
 def _head(units: Units) -> list[str]:
     height = units.height.name
     return [
-        f"{'N':>5} {'profile':<17} {'strongest':>9} {'term':<8} {'layer':>11} "
-        f"{'met':>3} {'group':<13}",
+        f"{'N':>5} {'profile':<17} {'strongest':>9} {'term':<8} {'layer':>11} {'met':>3} group",
         f"{'':>5} {'time, UTC':<17} {units.shear.name:>9} {'':<8} {height:>11}",
     ]
 

@@ -362,6 +362,18 @@ def test_watching_tells_a_change_a_line_and_tries_again_what_failed(tmp_path, ca
     assert captured.err.startswith(f"backveer: {file}: ")
 
 
+def test_watching_as_json_gives_an_object_a_line(tmp_path, capsys):
+    sounding(tmp_path, WEAK, name="a.csv", clock="00:40")
+    sounding(tmp_path, NIGHT, name="b.csv", clock="01:10")
+    settings = ShearSettings(rules=read_rules(), headings=(268.0, 88.0))
+    ends = runways(["268"], None)
+    watch_folder(str(tmp_path), Hints(), settings, ends, "aviation", True, 0.001, scans=2)
+    told = [json.loads(line) for line in capsys.readouterr().out.splitlines()]
+    assert [one["time"] for one in told] == ["2031-09-23T00:40:00Z", "2031-09-23T01:10:00Z"]
+    assert [one["low_level_shear"]["candidate_group"] for one in told] == [None, "WS010/26040KT"]
+    assert [end["runway"] for end in told[1]["low_level_shear"]["runways"]] == ["268", "088"]
+
+
 @pytest.mark.slow
 def test_watching_ends_cleanly_on_ctrl_c(tmp_path):
     sounding(tmp_path)
