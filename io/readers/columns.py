@@ -7,6 +7,7 @@ import numpy as np
 from backveer.io.readers.levels import Draft
 from backveer.io.readers.long_table import read_long
 from backveer.io.readers.place_and_time import site
+from backveer.io.readers.radial import is_radial, read_radial
 from backveer.io.readers.reading import Hints
 from backveer.io.readers.recognise import recognise
 from backveer.io.readers.table import Table
@@ -34,6 +35,8 @@ def understand(table: Table, hints: Hints) -> Draft:
     ReadError
         What cannot be understood, with the option that settles it; the source is not set.
     """
+    if is_radial(table.header, hints):
+        return read_radial(table, site(table.metadata, table.header, hints), hints)
     claims = recognise(
         table.header,
         table.units,
