@@ -81,8 +81,11 @@ def _table(each: Climate, over: RotorClimate, unit: Unit, factor: float, places:
         row += [number(each.wind_weighted_mean[i]), number(each.energy_weighted_mean[i])]
         row += [f"{100 * share:.1f}" for share in each.beyond[i]]
         rows.append(row)
-    lines = table([head], rows, "l" + "r" * (len(head) - 1)) if rows else ["  no value"]
-    if left:
+    lines = table([head], rows, "l" + "r" * (len(head) - 1)) if rows else []
+    if not rows:
+        why = "temperature and wind at two heights are needed" if each.kind == "stability" else ""
+        lines = [f"  no value{': ' if why else ''}{why}"]
+    elif left:
         lines.append(f"  {left} without a value left out")
     if told:
         reasons = sorted({str(why) for why in each.why.tolist() if why and "interval" in str(why)})
