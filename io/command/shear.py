@@ -2,6 +2,7 @@
 
 from __future__ import annotations
 
+import os
 import sys
 from typing import TYPE_CHECKING
 
@@ -12,6 +13,8 @@ from backveer.io.command.runways import height, runways
 from backveer.io.readers.reading import Hints, Reading
 
 if TYPE_CHECKING:
+    from pathlib import Path
+
     from backveer.io.command.runways import Runway
     from backveer.profiles.shear_statement import ShearSettings
 
@@ -246,41 +249,68 @@ def watch_folder(
     is about the latest profile of the file; what it changes is against the profile told before.
     ``scans`` ends after so many looks.
     """
-    import json
     from pathlib import Path
 
     from backveer.io.command.watch import settled
-    from backveer.io.readers.door import read
-    from backveer.io.words.shear_change import change_line, latest, met_rules
-    from backveer.io.words.units import NAMED
-    from backveer.profiles.shear_statement import shear_statement
 
     before: dict[str, frozenset[str]] = {}
     try:
         for paths in settled(Path(folder), interval, scans=scans):
             for path in paths:
-                reading = read([path], hints)
-                for failure in reading.failures:
-                    click.echo(f"backveer: {failure}", err=True)
-                if not reading.files or not reading.stack.profile_count:
-                    continue
-                said = shear_statement(reading.stack, settings, cause=False)
-                row = latest(said)
-                one = said.select(row)
-                station = str(one.stack.station[0])
-                if as_json:
-                    from backveer.io.words.record import profile_records
-                    from backveer.io.words.shear_record import answer, shear_records
-
-                    record = next(iter(profile_records(_only(reading, row))))
-                    told = answer(one.with_cause(), tuple(end.name for end in ends))
-                    record["low_level_shear"] = shear_records(told)[0]
-                    line = json.dumps(record, ensure_ascii=False, allow_nan=False)
-                else:
-                    line = change_line(one, 0, before.get(station), NAMED[units])
-                before[station] = met_rules(one)
-                click.echo(line)
-                sys.stdout.flush()
+                try:
+                    line = _told_of(path, hints, settings, ends, units, as_json, before)
+                except Exception as error:
+                    # A night's watch must not end with one odd file.
+                    if os.environ.get("BACKVEER_TRACEBACK"):
+                        raise
+                    fault = " ".join(f"{type(error).__name__}: {error}".split())[:200]
+                    line = None
+                    click.echo(
+                        f"backveer: {path}: internal fault ({fault}). Please report it.", err=True
+                    )
+                if line is not None:
+                    click.echo(line)
+                    sys.stdout.flush()
     except KeyboardInterrupt:
         click.echo("backveer: stopped watching.", err=True)
     return 0
+
+
+def _told_of(
+    path: Path,
+    hints: Hints,
+    settings: ShearSettings,
+    ends: tuple[Runway, ...],
+    units: str,
+    as_json: bool,
+    before: dict[str, frozenset[str]],
+) -> str | None:
+    """Return the line about a file's latest profile, and keep what it meets in ``before``."""
+    from backveer.io.readers.door import read
+    from backveer.io.words.shear_change import change_line, latest, met_rules
+    from backveer.io.words.units import NAMED
+    from backveer.profiles.shear_statement import shear_statement
+
+    reading = read([path], hints)
+    for failure in reading.failures:
+        click.echo(f"backveer: {failure}", err=True)
+    if not reading.files or not reading.stack.profile_count:
+        return None
+    said = shear_statement(reading.stack, settings, cause=False)
+    row = latest(said)
+    one = said.select(row)
+    station = str(one.stack.station[0])
+    if as_json:
+        import json
+
+        from backveer.io.words.record import profile_records
+        from backveer.io.words.shear_record import answer, shear_records
+
+        record = next(iter(profile_records(_only(reading, row))))
+        told = answer(one.with_cause(), tuple(end.name for end in ends))
+        record["low_level_shear"] = shear_records(told)[0]
+        line = json.dumps(record, ensure_ascii=False, allow_nan=False)
+    else:
+        line = change_line(one, 0, before.get(station), NAMED[units])
+    before[station] = met_rules(one)
+    return line

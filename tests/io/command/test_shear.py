@@ -374,6 +374,32 @@ def test_watching_as_json_gives_an_object_a_line(tmp_path, capsys):
     assert [end["runway"] for end in told[1]["low_level_shear"]["runways"]] == ["268", "088"]
 
 
+def test_one_odd_file_does_not_end_a_watch(tmp_path, capsys, monkeypatch):
+    sounding(tmp_path, name="a.csv")
+    sounding(tmp_path, name="b.csv")
+    from backveer.profiles import shear_statement as module
+
+    real, calls = module.shear_statement, []
+
+    def first_fails(*words, **more):
+        calls.append(words)
+        if len(calls) == 1:
+            raise ZeroDivisionError("odd\nfile")
+        return real(*words, **more)
+
+    monkeypatch.setattr(module, "shear_statement", first_fails)
+    monkeypatch.delenv("BACKVEER_TRACEBACK", raising=False)
+    settings = ShearSettings(rules=read_rules())
+    watch_folder(str(tmp_path), Hints(), settings, (), "aviation", False, 0.001, scans=2)
+    captured = capsys.readouterr()
+    assert captured.out.startswith("2031-09-23 00:40 UTC  Low Ness  6.3 kt/100 ft")
+    assert captured.out.count("\n") == 1
+    assert captured.err == (
+        f"backveer: {tmp_path / 'a.csv'}: internal fault (ZeroDivisionError: odd file). "
+        "Please report it.\n"
+    )
+
+
 @pytest.mark.slow
 def test_watching_ends_cleanly_on_ctrl_c(tmp_path):
     sounding(tmp_path)
