@@ -179,10 +179,11 @@ class Table:
     slope: Any
     log_mu: Any
 
-    def nearest(self, log_mu: float) -> tuple[float, Any]:
-        """Return the ln(mu) of the table closest to the wanted one, and F there over the grid."""
-        row = round((log_mu - LOG_MU[0]) / MU_STEP)
-        return float(self.log_mu[row]), self.value[row]
+    def nearest(self, s: Any, row: int) -> Any:
+        """Return F of one row of the table at the grid point below each ln(z/h)."""
+        place = (s - BOTTOM) / STEP
+        inside = np.clip(place, 0.0, self.value.shape[1] - 1.0).astype(np.intp)
+        return self.value[row].take(inside) - STEP * np.minimum(place, 0.0)
 
     def look_up(self, s: Any, log_mu: Any) -> tuple[Any, Any, Any]:
         """
@@ -190,14 +191,14 @@ class Table:
 
         Parameters
         ----------
-        s : array, shape (profile, level)
+        s : array
             ln(z/h).
-        log_mu : array, shape (profile,)
-            Inside ``LOG_MU``.
+        log_mu : array
+            Inside ``LOG_MU``, of a shape that broadcasts to that of ``s``.
 
         Returns
         -------
-        value, by_s, by_log_mu : complex array, shape (profile, level)
+        value, by_s, by_log_mu : complex array, shape of ``s``
             F and its derivatives. Below the table F is logarithmic, above it zero.
         """
         points = self.value.shape[1]
@@ -214,7 +215,7 @@ class Table:
         bend = 6.0 * t * rest
         tangent = rest * (1.0 - 3.0 * t), t * (3.0 * t - 2.0)
         for m in range(4):
-            at = (row + m)[:, np.newaxis] * points + left
+            at = (row + m) * points + left
             f0, f1 = self.value.ravel()[at], self.value.ravel()[at + 1]
             d0, d1 = self.slope.ravel()[at], self.slope.ravel()[at + 1]
             f = first[0] * f0 + first[1] * d0 + second[0] * f1 + second[1] * d1
@@ -230,7 +231,7 @@ class Table:
         """First of four rows, their weights for a cubic through them, and the weights' slopes."""
         place = (np.asarray(log_mu) - LOG_MU[0]) / MU_STEP
         row = np.clip(place.astype(np.intp) - 1, 0, len(self.log_mu) - 4)
-        x = (place - row)[:, np.newaxis]
+        x = place - row
         weights, changes = [], []
         for m in range(4):
             others = [n for n in range(4) if n != m]
