@@ -12,8 +12,8 @@ terrain or the instrument: a place to look, and no verdict. All mirrors: in the 
 friction makes the wind back with height.
 
 The textbook's spiral of constant viscosity that has the same friction velocity and angle (Taylor,
-G. I., 1915: Phil. Trans. R. Soc. A, 215, 1-26; from memory) turns 0.9 to 1.9 times as much across a
-rotor as solved layers do, and is not used (tests/profiles/test_expected_veer.py).
+G. I., 1915: Phil. Trans. R. Soc. A, 215, 1-26; from memory) turned 0.9 to 1.9 times as much across
+a rotor as neutral layers solved with a varying viscosity (measured), and is not used.
 """
 
 from __future__ import annotations

@@ -3,6 +3,7 @@
 from __future__ import annotations
 
 import sys
+from collections.abc import Sequence
 from typing import TYPE_CHECKING, Any
 
 import click
@@ -197,11 +198,10 @@ def rotor(
     reading = found.reading
     if not reading.files:
         return exit_status(reading)
-    remarks = [*reading.files[0].remarks, *found.remarks]
     if interval is not None:
-        reading, said = _averaged(reading, interval, stamp)
-        remarks += said
+        reading = _averaged(reading, interval, stamp)
     stack = reading.stack
+    remarks = reading.files[0].remarks
     count = stack.profile_count
     if profile is not None and profile > count:
         raise click.BadParameter(f"there are only {count} profiles", param_hint="--profile")
@@ -358,7 +358,7 @@ def _thresholds(text: str | None) -> tuple[float, ...]:
     return tuple(dict.fromkeys(values))
 
 
-def _averaged(reading: Reading, minutes: float, stamp: str) -> tuple[Reading, list[str]]:
+def _averaged(reading: Reading, minutes: float, stamp: str) -> Reading:
     import numpy as np
 
     from backveer.io.readers.series import joined
@@ -384,7 +384,7 @@ def _averaged(reading: Reading, minutes: float, stamp: str) -> tuple[Reading, li
         f"{means.profile_count} averages over {minutes:g} min of {stack.profile_count} profiles; "
         f"levels with under {100 * AVAILABILITY_LIMIT:.0f} % of the samples left out"
     )
-    return joined(reading, check(means)), [said]
+    return joined(reading, check(means), [said])
 
 
 def _fitted(stack: Stack, wanted: bool, wind_error: float | None) -> tuple[Any, Any, Any]:
@@ -463,7 +463,7 @@ def _printed(
     over: Any,
     joint: tuple[str, ...],
     units: str,
-    remarks: list[str],
+    remarks: Sequence[str],
     profile: int | None,
     stamp: str,
     utc_offset: float | None,

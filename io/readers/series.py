@@ -7,6 +7,7 @@ case nobody can say from the file which instant a line belongs to, and it is ref
 
 from __future__ import annotations
 
+from collections.abc import Sequence
 from dataclasses import dataclass
 from typing import Any
 
@@ -41,14 +42,11 @@ class Series:
         The files as they were read, without those that were refused.
     interval
         Usual time from one profile to the next, timedelta64[ns]; not-a-time for a single one.
-    remarks
-        What was left out, each a sentence without a full stop.
     """
 
     reading: Reading
     inputs: Reading
     interval: Any
-    remarks: tuple[str, ...]
 
     @property
     def stack(self) -> Stack:
@@ -91,22 +89,22 @@ def series(reading: Reading, utc_offset: float | None = None) -> Series:
             failures.append(problem)
     left = Reading(tuple(kept), tuple(failures))
     if not kept:
-        return Series(left, left, np.timedelta64("NaT", "ns"), ())
+        return Series(left, left, np.timedelta64("NaT", "ns"))
     stack = left.stack
     order, remarks = _order(stack)
     if not np.array_equal(order, np.arange(stack.profile_count)):
         stack = stack.select(order)
-    return Series(joined(left, stack), left, usual_interval(stack.time), tuple(remarks))
+    return Series(joined(left, stack, remarks), left, usual_interval(stack.time))
 
 
-def joined(reading: Reading, stack: Stack) -> Reading:
-    """Return profiles made from a reading as the only file of one."""
+def joined(reading: Reading, stack: Stack, more: Sequence[str] = ()) -> Reading:
+    """Return profiles made from a reading as the only file of one, with more remarks."""
     first = reading.files[0]
     others = len(reading.files) - 1
     source = first.source if not others else f"{first.source} and {others} more"
     columns = tuple(dict.fromkeys(column for file in reading.files for column in file.columns))
     remarks = tuple(dict.fromkeys(remark for file in reading.files for remark in file.remarks))
-    return Reading((FileReading(source, stack, columns, remarks),), reading.failures)
+    return Reading((FileReading(source, stack, columns, (*remarks, *more)),), reading.failures)
 
 
 def clock_change(time: Times, fixed_clock: bool) -> ReadError | None:

@@ -238,7 +238,7 @@ def _expected(expected: ExpectedVeer, told: Rotor, row: int, place: int, units: 
 
 
 def record_text(
-    stack: Stack, stamp: str, utc_offset: float | None, remarks: list[str]
+    stack: Stack, stamp: str, utc_offset: float | None, remarks: Sequence[str]
 ) -> tuple[str, int]:
     """
     Write what record the answers are of, and return how many profiles a complete one would have.

@@ -43,13 +43,13 @@ def test_the_first_of_two_profiles_of_a_time_is_kept() -> None:
     other = record("2031-05-14", 2, eastward_wind=np.array([[5.0, 6.0], [9.0, 9.0]]))
     found = series(Reading((record("2031-05-14", 2), other), ()))
     assert found.stack.eastward_wind.tolist() == [[5, 6], [6, 7]]
-    assert found.remarks == (
+    assert found.reading.files[0].remarks[1:] == (
         "2 profiles of a time that had one already left out, 1 of them with another wind",
     )
     # Another station's profile of the same time is no duplicate.
     apart = series(Reading((record("2031-05-14", 2), record("2031-05-14", 2, station="Punta")), ()))
     assert apart.stack.profile_count == 4
-    assert apart.remarks == ()
+    assert apart.reading.files[0].remarks == ("read 2031-05-14",)
 
 
 def test_profiles_without_time_are_kept_at_the_end() -> None:
