@@ -297,7 +297,9 @@ def _turbines(hub: float | None, diameter: float | None, path: str | None) -> li
         raise click.UsageError("give --turbines or --hub-height and --rotor-diameter, not both")
     try:
         if path is not None:
-            return _turbine_file(path)
+            from backveer.io.readers.turbine_file import read_turbines
+
+            return read_turbines(path)
         if hub is None or diameter is None:
             raise click.UsageError(
                 "what turbine? Give --hub-height and --rotor-diameter in m, or --turbines FILE.toml"
@@ -305,45 +307,6 @@ def _turbines(hub: float | None, diameter: float | None, path: str | None) -> li
         return [Turbine("turbine", hub, diameter)]
     except ValueError as error:
         raise click.UsageError(str(error)) from None
-
-
-def _turbine_file(path: str) -> list[Turbine]:
-    """Read [[turbine]] tables: name, hub_height, rotor_diameter."""
-    import tomllib
-    from pathlib import Path
-
-    from backveer.profiles.rotor import Turbine
-
-    try:
-        kept = tomllib.loads(Path(path).read_text(encoding="utf-8"))
-    except (OSError, UnicodeDecodeError, tomllib.TOMLDecodeError) as error:
-        raise click.UsageError(f"{path}: not a TOML file that can be read ({error})") from None
-    tables = kept.get("turbine")
-    if set(kept) != {"turbine"} or not isinstance(tables, list) or not tables:
-        raise click.UsageError(
-            f"{path}: holds no turbines. Write tables [[turbine]] with name, hub_height and "
-            f"rotor_diameter"
-        )
-    turbines: list[Turbine] = []
-    for number, table in enumerate(tables, 1):
-        wanted = {"name", "hub_height", "rotor_diameter"}
-        if not isinstance(table, dict) or set(table) != wanted:
-            raise click.UsageError(
-                f"{path}: turbine {number} must have name, hub_height and rotor_diameter, and "
-                f"nothing else"
-            )
-        sizes = table["hub_height"], table["rotor_diameter"]
-        if not isinstance(table["name"], str) or not all(
-            isinstance(size, int | float) and not isinstance(size, bool) for size in sizes
-        ):
-            raise click.UsageError(
-                f"{path}: turbine {number}: the name must be a text, the sizes numbers of metres"
-            )
-        turbines.append(Turbine(table["name"], float(sizes[0]), float(sizes[1])))
-    names = [each.name for each in turbines]
-    if len(set(names)) < len(names):
-        raise click.UsageError(f"{path}: two turbines have the same name. Name them apart")
-    return turbines
 
 
 def _thresholds(text: str | None) -> tuple[float, ...]:
