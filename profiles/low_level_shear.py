@@ -37,11 +37,12 @@ FROM_SURFACE = (500 * FOOT, 1000 * FOOT, 1600 * FOOT, 2000 * FOOT)
 SURFACE_LIMIT = 30.0  # m, common practice, no source
 LOWEST_REACH = FROM_SURFACE[0]
 
-#: Terms of intensity and the shear, in kt per 100 ft, from which each holds. Wording after the
-#: Fifth Air Navigation Conference (1967), as told of ICAO Doc 9817 and Circular 186: light 0-4,
-#: moderate 5-8, strong 9-12, severe above 12 kt per 100 ft. From memory and a second-hand note
-#: that itself says "not verified from an ICAO document" (checks V2, V2b). The published classes
-#: leave gaps between whole knots; the bounds here are the lower ends, so that 4.5 kt is light.
+#: Terms of intensity and the shear, in kt per 100 ft, from which each holds; the severe above it.
+#: Wording after the Fifth Air Navigation Conference (1967), as told of ICAO Doc 9817 and Circular
+#: 186: light 0-4, moderate 5-8, strong 9-12, severe above 12 kt per 100 ft. From memory and a
+#: second-hand note that itself says "not verified from an ICAO document" (checks V2, V2b). The
+#: published classes leave gaps between whole knots; the bounds here are the lower ends, so that
+#: 4.5 kt is light.
 INTENSITY = (("light", 0.0), ("moderate", 5.0), ("strong", 9.0), ("severe", 12.0))
 
 
@@ -271,7 +272,9 @@ def intensity(shear: Floats, error: Floats) -> Words:
     with np.errstate(invalid="ignore"):
         for name, bound in INTENSITY:
             # A bound met to rounding is met: 5 kt per 100 ft is moderate, however it was computed.
-            term[np.asarray(shear >= bound * KNOT_PER_100_FEET * (1 - 1e-9))] = name
+            # The severe begin above theirs.
+            slack = 1 + 1e-9 if name == "severe" else 1 - 1e-9
+            term[np.asarray(shear >= bound * KNOT_PER_100_FEET * slack)] = name
         term[np.asarray(~(shear >= error))] = ""
     return term
 

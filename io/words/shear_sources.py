@@ -25,7 +25,7 @@ SHEAR_SOURCES = (
     Source(
         "terms of intensity",
         "limits in kt per 100 ft",
-        "light; moderate from 5, strong from 9, severe from 12",
+        "light; moderate from 5, strong from 9, severe above 12",
         (
             "ICAO: Fifth Air Navigation Conference (1967), as told of Doc 9817 and Circular 186 "
             "(from memory and second hand)",

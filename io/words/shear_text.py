@@ -34,8 +34,14 @@ from backveer.profiles.shear_statement import ShearStatement
 TERMS = (
     "Terms: "
     + ", ".join(
-        f"{term} from {bound:.0f}" if bound else f"{term} below {INTENSITY[1][1]:.0f}"
-        for term, bound in INTENSITY
+        f"{term} {how} {bound:.0f}"
+        for (term, _), (how, bound) in zip(
+            INTENSITY,
+            [("below", INTENSITY[1][1])]
+            + [("from", bound) for _, bound in INTENSITY[1:-1]]
+            + [("above", INTENSITY[-1][1])],
+            strict=True,
+        )
     )
     + " kt per 100 ft; ICAO, after the Fifth Air Navigation Conference (1967), as told of Doc 9817 "
     "and Circular 186 (from memory and second hand)."
@@ -144,7 +150,11 @@ def _window(one: ShearStatement, units: Units) -> str:
     least = "at least " if shear.window_lower_bound[0] else ""
     value = with_error(shear.window_shear[0], shear.window_error[0], units.shear)
     turn = shear.window_direction_change[0]
-    turned = f", direction {turn:+.0f} deg" if np.isfinite(turn) else ", direction not determined"
+    turned = (
+        f", direction {plainly(turn, DEGREE, 0, True)} deg"
+        if np.isfinite(turn)
+        else ", direction not determined"
+    )
     text = (
         f"{least}{value} {units.shear.name} ({shear.window_intensity[0]}) from "
         f"{span(base, top, units)}; vector difference "

@@ -115,10 +115,10 @@ def test_bulk_shear_as_metpy_computes_it():
 def test_terms_of_intensity_begin_where_the_table_says():
     # Classes as told of ICAO Doc 9817 (checks V2b, from memory): 0-4, 5-8, 9-12, > 12 kt/100 ft.
     kt = KNOT_PER_100_FEET
-    tiny = np.full(8, 1e-6)
-    terms = intensity(np.array([4, 4.99, 5, 8, 9, 11.9, 12.1, np.nan]) * kt, tiny)
+    tiny = np.full(9, 1e-6)
+    terms = intensity(np.array([4, 4.99, 5, 8, 9, 11.9, 12, 12.1, np.nan]) * kt, tiny)
     assert terms.tolist() == [
-        "light", "light", "moderate", "moderate", "strong", "strong", "severe", "",
+        "light", "light", "moderate", "moderate", "strong", "strong", "strong", "severe", "",
     ]  # fmt: skip
 
 
