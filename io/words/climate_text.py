@@ -60,7 +60,7 @@ def _table(each: Climate, over: RotorClimate, unit: Unit, factor: float, places:
         return plainly(float(value) * factor, unit, places)
 
     at = [int(np.flatnonzero(each.percentile_at == p)[0]) for p in (5.0, 95.0)]
-    head = [each.kind, "count", "recov.", "mean"]
+    head = ["speed, m/s" if each.kind == "speed" else each.kind, "count", "recov.", "mean"]
     if told:
         head.append(f"{100 * each.confidence:.0f} % interval")
     head += ["5 %", "median", "95 %", "wind-w.", "energy-w."]
@@ -90,7 +90,7 @@ def _table(each: Climate, over: RotorClimate, unit: Unit, factor: float, places:
     if told:
         reasons = sorted({str(why) for why in each.why.tolist() if why and "interval" in str(why)})
         lines += [wrapped(f"no interval where there are {why}", "  ") for why in reasons]
-        if each.kind == "all":
+        if each.kind == "all" and np.isfinite(each.mean_low).any():
             lines.append(
                 wrapped(
                     f"intervals by resampling blocks of {each.block_days} "
