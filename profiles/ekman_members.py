@@ -13,14 +13,20 @@ from typing import Any
 import numpy as np
 
 from backveer.profiles.ekman_errors import LENGTHS, effective_levels, noise_weights, spread, t95
-from backveer.profiles.ekman_moments import Profiles, basis_moments, whiten
+from backveer.profiles.ekman_moments import (
+    Moments,
+    Profiles,
+    basis_moments,
+    coarse_moments,
+    whiten,
+)
 from backveer.profiles.ekman_parameters import describe, quantities, standard_errors
 from backveer.profiles.ekman_search import (
     MEMBERS,
     TRIALS,
     WITHOUT_FRICTION,
     ceilings,
-    first_guess,
+    lowest,
     project,
     refine,
     without_friction,
@@ -30,6 +36,8 @@ from backveer.profiles.grid import ordered_sum
 #: What a parameter costs beyond AICc. Without it one profile in five with independent noise is
 #: given a shear or a slip that it does not have; with it one in fourteen (measured, synthetic).
 PRICE = 1.0
+#: Twice the logarithm of the likelihood by which a spiral of the other sense must fit better.
+WRONG_SENSE = 6.0
 
 
 @dataclass
@@ -54,6 +62,8 @@ class Members:
         not lessened by there being few effective levels.
     without_friction : array, shape (profile,)
         The better AICc of a constant and of a linear wind.
+    wrong_sense : array of bool, shape (profile,)
+        Whether a spiral that turns the other way fits clearly better.
     length, levels : array, shape (profile,)
         Noise length [m] and effective number of levels, weighed.
     t : array, shape (member, profile)
@@ -70,6 +80,7 @@ class Members:
     aicc: Any
     doubt: Any
     without_friction: Any
+    wrong_sense: Any
     length: Any
     levels: Any
     t: Any
@@ -93,15 +104,18 @@ def fit_members(data: Profiles, f: Any, floor: Any, known_length: float | None) 
     given = LENGTHS if known_length is None else np.array([float(known_length)])
     lengths = np.broadcast_to(given, (len(data.count), given.size))
     with np.errstate(over="ignore", invalid="ignore", divide="ignore", under="ignore"):
-        guess, edge = first_guess(data)
+        roof = np.minimum(ceilings(data.unit), TRIALS[-1])
+        guess, sheared, right, wrong = _either_sense(data, roof)
         noises = whiten(data, lengths)
         weights = np.ones(lengths.shape)
         if given.size > 1:
-            weights = noise_weights(data, noises, guess[:, [1, 3]], ~edge[:, 3])
+            weights = noise_weights(data, noises, guess, sheared)
         length = ordered_sum(weights * lengths)
         levels = ordered_sum(weights * effective_levels(data, lengths))
         noise = whiten(data, length[:, np.newaxis])
-        delta = refine(data, noise, guess)
+        grid, _ = coarse_moments(data, TRIALS[-2:], TRIALS.size // 2 - 1, noise)
+        start = [lowest(grid, TRIALS, one, roof[:, m])[0] for m, one in enumerate(MEMBERS)]
+        delta = refine(data, noise, np.stack(start, axis=-1))
         sums, by_length = basis_moments(data, delta, noise, noises)
         answers, values, errors, scatter, residual, sound = [], [], [], [], [], []
         for m, member in enumerate(MEMBERS):
@@ -118,7 +132,6 @@ def fit_members(data: Profiles, f: Any, floor: Any, known_length: float | None) 
             scatter.append(own_noise)
             residual.append(one.residual[:, 0, 0])
             sound.append(one.sound[:, 0, 0] & (data.count > 0))
-        roof = np.minimum(ceilings(data.unit), TRIALS[-1])
         squares, nothing = np.stack(residual, -1), np.stack(without_friction(sums), -1)
         return Members(
             answers=answers,
@@ -131,6 +144,7 @@ def fit_members(data: Profiles, f: Any, floor: Any, known_length: float | None) 
             aicc=_aicc(squares, data.count, levels, _PARAMETERS),
             doubt=_aicc(squares, data.count, data.count, _PARAMETERS),
             without_friction=_aicc(nothing, data.count, levels, _WITHOUT).min(-1),
+            wrong_sense=2.0 * levels * np.log(right / wrong) > WRONG_SENSE,
             length=length,
             levels=levels,
             t=t95(data.count + levels - _PARAMETERS[:, np.newaxis]),
@@ -139,6 +153,26 @@ def fit_members(data: Profiles, f: Any, floor: Any, known_length: float | None) 
 
 _PARAMETERS = np.array([member.parameters for member in MEMBERS], dtype=float)
 _WITHOUT = np.array([member.parameters for member in WITHOUT_FRICTION], dtype=float)
+
+
+def _either_sense(data: Profiles, roof: Any) -> tuple[Any, ...]:
+    """
+    Fit the richest members roughly, by ordinary least squares, to the wind and to its mirror image.
+
+    Returns the scale heights of the two (profile, 2), whether the sheared one may be fitted, and
+    the least residual of either for the wind and for its mirror image.
+    """
+    independent = whiten(data, np.zeros((len(data.count), 1)))
+    sums, mirrored = coarse_moments(data, TRIALS[-1:], TRIALS.size // 2 - 1, independent)
+    other = Moments(sums.gram, mirrored, sums.wind, sums.log_determinant)
+    guess, edges, residuals = [], [], []
+    for moments in (sums, other):
+        found = [lowest(moments, TRIALS[1::2], MEMBERS[m], roof[:, m]) for m in (1, 3)]
+        guess.append(np.stack([one[0] for one in found], axis=-1))
+        edges.append(found[1][1])
+        residuals.append(np.minimum(found[0][2], found[1][2]))
+    least = 1e-12 * sums.wind[:, 0, 0] + 1e-300
+    return guess[0], ~edges[0], np.maximum(residuals[0], least), np.maximum(residuals[1], least)
 
 
 def _rms(data: Profiles, answer: Any) -> Any:

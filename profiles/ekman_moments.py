@@ -56,6 +56,10 @@ class Profiles(NamedTuple):
     count: Any
     unit: Any
 
+    def at(self, rows: Any) -> Profiles:
+        """Return some of the profiles."""
+        return Profiles(*(array[rows] for array in self))
+
 
 @dataclass
 class Moments:
@@ -110,6 +114,12 @@ class Whitening:
     diagonals: Any
     plain: Any
     log_determinant: Any
+
+    def at(self, rows: Any) -> Whitening:
+        """Return that of some of the profiles."""
+        return Whitening(
+            self.columns[rows], self.diagonals[rows], self.plain[rows], self.log_determinant[rows]
+        )
 
 
 def profiles_of(z: Any, u: Any, v: Any, count: Any, unit: Any) -> Profiles:
@@ -231,9 +241,11 @@ def basis_moments(data: Profiles, delta: Any, *noise: Whitening) -> list[Moments
     ]
 
 
-def coarse_moments(data: Profiles, largest: Any, halvings: int, noise: Whitening) -> Moments:
+def coarse_moments(
+    data: Profiles, largest: Any, halvings: int, noise: Whitening
+) -> tuple[Moments, Any]:
     """
-    Sum the moments for a shared row of scale heights under independent noise, without the tangent.
+    Sum the moments for a row of scale heights that all profiles share, without the tangent.
 
     Parameters
     ----------
@@ -245,21 +257,24 @@ def coarse_moments(data: Profiles, largest: Any, halvings: int, noise: Whitening
         How often they are halved: the decay for half a scale height is the square of that for the
         whole, which spares nearly all of the exponentials.
     noise
-        From :func:`whiten`, of length 0.
+        Of one length a profile, from :func:`whiten`.
 
     Returns
     -------
-    Moments
+    moments
         Trials in increasing order.
+    mirrored
+        What stands in place of ``moments.rhs`` if the wind turns the other way (v to -v).
     """
     count, width = data.z.shape
     few = len(largest)
     trials = few * (halvings + 1)
-    sums = np.empty((count, 4, 3 * trials))
+    linear = np.zeros((count, 4, 1, 4, trials))
+    square = np.zeros((count, 2, 1, 7, trials))
     for rows in _slices(count, width * trials):
         z = data.z[rows, np.newaxis]
-        columns = np.empty((len(z), 3, trials, width))
-        c, s, e2 = (columns[:, k] for k in range(3))
+        columns = np.empty((len(z), 2, trials, width))
+        c, s = columns[:, 0], columns[:, 1]
         _decay(z, largest[:, np.newaxis], c[:, -few:], s[:, -few:])
         for start in range(trials - 2 * few, -1, -few):
             half, whole = slice(start, start + few), slice(start + few, start + 2 * few)
@@ -267,15 +282,21 @@ def coarse_moments(data: Profiles, largest: Any, halvings: int, noise: Whitening
             c[:, half] -= s[:, whole] * s[:, whole]
             np.multiply(c[:, whole], s[:, whole], out=s[:, half])
             s[:, half] *= 2.0
-        np.multiply(c, c, out=e2)
-        e2 += s * s
-        sums[rows] = _product(noise.columns[rows], columns.reshape(len(z), 3 * trials, width))
-    by = sums.reshape(count, 4, 1, 3, trials)
-    linear = np.zeros((count, 4, 1, 4, trials))
-    linear[:, :, :, :2] = by[:, :, :, :2]
-    square = np.zeros((count, 2, 1, 7, trials))
-    square[:, 0, :, 0] = by[:, 0, :, 2]
-    return _assemble(noise, linear, square)
+        squares = np.zeros((len(z), 2, trials, width))
+        np.multiply(c, c, out=squares[:, 0])
+        squares[:, 0] += s * s
+        np.multiply(c[..., 1:], c[..., :-1], out=squares[:, 1, :, 1:])
+        squares[:, 1, :, 1:] += s[..., 1:] * s[..., :-1]
+        sums = _product(noise.columns[rows], columns.reshape(len(z), 2 * trials, width))
+        linear[rows, :, 0, :2] = sums.reshape(len(z), 4, 2, trials)
+        sums = _product(noise.diagonals[rows], squares.reshape(len(z), 2 * trials, width))
+        square[rows, 0, 0, 0] = sums[:, 0, :trials]
+        square[rows, 1, 0, 3] = sums[:, 1, trials:]
+    moments = _assemble(noise, linear, square)
+    u, v = linear[:, 2], linear[:, 3]
+    mirrored = [x.conj() for x in moments.rhs]
+    mirrored[DECAY] = (u[:, :, 0] - v[:, :, 1]) - 1j * (v[:, :, 0] + u[:, :, 1])
+    return moments, mirrored
 
 
 def _decay(z: Any, delta: Any, c: Any, s: Any) -> None:

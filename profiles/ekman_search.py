@@ -24,8 +24,6 @@ from backveer.profiles.ekman_moments import (
     Profiles,
     Whitening,
     basis_moments,
-    coarse_moments,
-    whiten,
 )
 
 
@@ -63,8 +61,9 @@ WITHOUT_FRICTION = (
 TRIALS = 15.0 * 2.0 ** (np.arange(20) / 2.0)
 PER_OCTAVE = 2
 SINGULAR = 1e-8  # a column that is this small beside itself after elimination is not there
-SURE = 0.02  # a step of ln(scale height) as short as this is taken on trust
-STEPS = 4  # after the parabola; the secant makes each square the error, or nearly
+STEPS = 8  # at most, after the parabola; hardly a profile takes more than four
+ARRIVED = 1e-4  # a last step of ln(scale height) after which nothing is left, for steps square
+SURE = 1e-3  # a step as short as this is taken on trust
 
 
 @dataclass
@@ -202,42 +201,41 @@ def descent(member: Member, projection: Projection, delta: Any, unit: Any) -> tu
     return downhill[..., 0], curvature[..., 0]
 
 
-def first_guess(data: Profiles) -> tuple[Any, Any]:
+def lowest(moments: Moments, trials: Any, member: Member, ceiling: Any) -> tuple[Any, ...]:
     """
-    Find the scale height of each member to about a tenth, by ordinary least squares on a grid.
+    Find the scale height of a member on a grid, and between by a parabola.
 
     Parameters
     ----------
-    data
-        The profiles.
+    moments
+        For one noise length a profile and all trials.
+    trials : array, shape (trial,)
+        Scale heights, evenly spaced in their logarithm. [m]
+    member
+        Which member.
+    ceiling : array, shape (profile,)
+        Its largest scale height. [m]
 
     Returns
     -------
-    delta, edge : array, shape (profile, member)
-        Scale height of the least residual [m], and whether it is no minimum inside the range.
+    delta, edge, least : array, shape (profile,)
+        Scale height of the least residual [m], whether it is no minimum inside the range, and the
+        least residual on the grid.
     """
-    trials = np.broadcast_to(TRIALS, (data.z.shape[0], TRIALS.size))
-    independent = whiten(data, np.zeros((data.z.shape[0], 1)))
-    coarse = coarse_moments(data, TRIALS[-PER_OCTAVE:], TRIALS.size // PER_OCTAVE - 1, independent)
-    log_delta = np.empty((data.z.shape[0], len(MEMBERS)))
-    edge = np.zeros(log_delta.shape, dtype=bool)
-    logs = np.log(TRIALS)
-    ceiling = ceilings(data.unit)
-    for m, member in enumerate(MEMBERS):
-        columns = list(member.columns)
-        _, _, residual, sound, _ = _eliminate(coarse, columns, len(columns))
-        usable = sound[:, 0] & (trials <= ceiling[:, m : m + 1])
-        residual = np.where(usable, residual[:, 0], np.inf)
-        best = np.argmin(residual, axis=-1)
-        inner = np.clip(best, 1, TRIALS.size - 2)
-        r = [np.take_along_axis(residual, (inner + k)[:, np.newaxis], -1)[:, 0] for k in (-1, 0, 1)]
-        inside = (inner == best) & np.isfinite(r[0]) & np.isfinite(r[1]) & np.isfinite(r[2])
-        with np.errstate(invalid="ignore", divide="ignore", over="ignore"):
-            shift = 0.5 * (r[0] - r[2]) / (r[0] - 2 * r[1] + r[2])
-        shift = np.where(inside & np.isfinite(shift), np.clip(shift, -1, 1), 0.0)
-        log_delta[:, m] = logs[best] + shift * (logs[1] - logs[0])
-        edge[:, m] = ~inside
-    return np.exp(log_delta), edge
+    columns = list(member.columns)
+    _, _, residual, sound, _ = _eliminate(moments, columns, len(columns))
+    usable = sound[:, 0] & (trials <= ceiling[:, np.newaxis])
+    residual = np.where(usable, residual[:, 0], np.inf)
+    best = np.argmin(residual, axis=-1)
+    inner = np.clip(best, 1, trials.size - 2)
+    r = [np.take_along_axis(residual, (inner + k)[:, np.newaxis], -1)[:, 0] for k in (-1, 0, 1)]
+    inside = (inner == best) & np.isfinite(r[0]) & np.isfinite(r[1]) & np.isfinite(r[2])
+    with np.errstate(invalid="ignore", divide="ignore", over="ignore"):
+        shift = 0.5 * (r[0] - r[2]) / (r[0] - 2 * r[1] + r[2])
+    shift = np.where(inside & np.isfinite(shift), np.clip(shift, -1, 1), 0.0)
+    logs = np.log(trials)
+    least = np.min(residual, axis=-1)
+    return np.exp(logs[best] + shift * (logs[1] - logs[0])), ~inside, least
 
 
 def ceilings(reach: Any) -> Any:
@@ -278,28 +276,31 @@ def refine(data: Profiles, noise: Whitening, start: Any) -> Any:
     A step that does not help is halved.
     """
     floor, roof = np.log(TRIALS[0]), np.log(np.minimum(ceilings(data.unit), TRIALS[-1]))
-    best = trial = np.clip(np.log(start), floor, roof)
-    least = np.full(start.shape, np.inf)
+    trial = np.clip(np.log(start), floor, roof)
+    best, least = trial.copy(), np.full(start.shape, np.inf)
     move, last_slope = np.zeros(start.shape), np.full(start.shape, np.nan)
+    rows = np.flatnonzero(data.count > 0)  # those still on their way
     for _ in range(STEPS):
-        residual, slope, curvature = (np.empty(start.shape) for _ in range(3))
-        (sums,) = basis_moments(data, np.exp(trial), noise)
+        here = data.at(rows)
+        residual, slope, curvature = (np.empty((rows.size, len(MEMBERS))) for _ in range(3))
+        (sums,) = basis_moments(here, np.exp(trial[rows]), noise.at(rows))
         for m, member in enumerate(MEMBERS):
             one = project(sums.trial(m), member)
             residual[:, m] = np.where(one.sound, one.residual, np.inf)[:, 0, 0]
-            downhill, bend = descent(member, one, np.exp(trial[:, m]), data.unit)
+            downhill, bend = descent(member, one, np.exp(trial[rows, m]), here.unit)
             slope[:, m], curvature[:, m] = downhill[:, 0], bend[:, 0]
-        secant = (last_slope - slope) / (trial - best)
-        like = (secant > 0.3 * curvature) & (secant < 3.0 * curvature)
-        with np.errstate(divide="ignore", invalid="ignore", over="ignore"):
-            ahead = np.clip(slope / np.where(like, secant, curvature), -0.5, 0.5)
-        better = residual < least
-        move = np.where(better, np.where(np.isfinite(ahead), ahead, 0.0), 0.5 * move)
-        best, least = np.where(better, trial, best), np.where(better, residual, least)
-        last_slope = np.where(better, slope, last_slope)
-        trial = np.clip(best + move, floor, roof)
+        secant = (last_slope[rows] - slope) / (trial[rows] - best[rows])
+        like = (secant > 0.03 * curvature) & (secant < 30.0 * curvature)
+        ahead = np.clip(slope / np.where(like, secant, curvature), -0.5, 0.5)
+        better = residual < least[rows]
+        move[rows] = np.where(better, np.where(np.isfinite(ahead), ahead, 0.0), 0.5 * move[rows])
+        best[rows] = np.where(better, trial[rows], best[rows])
+        least[rows] = np.where(better, residual, least[rows])
+        last_slope[rows] = np.where(better, slope, last_slope[rows])
+        trial[rows] = np.clip(best[rows] + move[rows], floor, roof[rows])
+        rows = rows[(np.abs(trial[rows] - best[rows]) > ARRIVED).any(axis=-1)]
     # The last step is not tried any more, and taken only where nothing can go wrong.
-    return np.exp(np.where(better & (np.abs(trial - best) < SURE), trial, best))
+    return np.exp(np.where(np.abs(trial - best) < SURE, trial, best))
 
 
 def without_friction(moments: Moments) -> list[Any]:

@@ -23,7 +23,7 @@ LIGHT = 3.0  # geostrophic wind over its error, or over the noise, under which t
 LOOSE = 0.15  # error of ln(scale height), or of G over G, above which a fit is weak: K to a third
 LOST = 0.7  # error of ln(scale height) above which it is known only to a factor of two
 BETTER = 2.0  # by how much friction must improve on a wind without friction
-MISFIT = 3.0  # residual over the wind's own noise, and
+MISFIT = 3.0  # residual over the wind's own error, where that is known, and
 MISFIT_LEAST = 1.0  # m/s: above both the spiral misses the profile
 ASTRAY = 60.0  # degrees of the surface wind from the surface stress, against Taylor's condition
 ASTRAY_ERRORS = 2.0
@@ -48,9 +48,11 @@ class Evidence:
     inside: Any
     aicc: Any
     null: Any
+    wrong_sense: Any
     lowest: Any
     reach: Any
     noise: Any
+    floor: Any
     rms: Any
     chosen: dict[str, Any]
     errors: dict[str, Any]
@@ -85,6 +87,7 @@ def judge(evidence: Evidence) -> tuple[Words, Words]:
         grave = [
             (e.declined != "", e.declined),
             (~e.fitted, _Numbered("too few levels ({:d}) below " + f"{e.top:.0f} m", e.levels)),
+            (e.wrong_sense, WRONG),
             (~found & (e.sound & ~e.inside).any(axis=-1), EDGE),
             (~found, "too few levels for the correlation of the noise"),
             (
@@ -108,7 +111,7 @@ def judge(evidence: Evidence) -> tuple[Words, Words]:
             (loose[0], "the error of the scale height is large"),
             (loose[1], "the error of the geostrophic wind is large"),
             (
-                (component > MISFIT * e.noise) & (component > MISFIT_LEAST),
+                (component > MISFIT * e.floor) & (component > MISFIT_LEAST) & (e.floor > 0),
                 _Numbered("the spiral misses the profile by {:.1f} m/s", e.rms),
             ),
             (
