@@ -31,6 +31,7 @@ plausible              what each quantity can be, and which numbers stand for a 
 preamble               what stands around a table: comments, metadata lines, rules, units
 profiles_apart         which rows of a long table are one profile, and in which order its levels
                        stand
+radial                 long tables of line-of-sight velocities, as a scanning lidar writes them
 reading                what was read, and how it was understood
 recognise              which column is what, and why: from the names and the units row alone
 row_places             time and place of each row, where columns say them
@@ -43,6 +44,7 @@ spellings              accepted names of columns and metadata (spellings.toml), 
                        is looked up
 table                  what a text file says before anyone knows what its columns mean
 text                   From the bytes of a text file to its tables
+turbine_file           turbines kept in a file: name, hub height and rotor diameter
 units                  accepted spellings of units, and what they are in SI
 wide_table             wide tables: one row a time, columns by height, as lidars and masts write
                        them

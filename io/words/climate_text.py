@@ -30,12 +30,26 @@ def climate_text(over: RotorClimate, joint: tuple[str, ...] = (), *, units: str 
     """
     unit, factor, places = _shown(over, NAMED[units])
     blocks = [_table(each, over, unit, factor, places) for each in over.tables]
+    blocks[0] += "\n" + _direction(over)
     blocks += [_events(each, over, unit, factor) for each in over.events]
     if "speed" in joint:
         blocks.append(_joint(over.by_speed, "speed bin, m/s"))
     if "hour" in joint:
         blocks.append(_joint(over.by_hour, "hour"))
     return "\n\n".join(blocks)
+
+
+def _direction(over: RotorClimate) -> str:
+    told = over.direction
+    mean, by_wind = float(told.mean_direction[0]), float(told.wind_weighted_mean_direction[0])
+    if not np.isfinite(mean):
+        return wrapped("hub direction: no mean, because the vectors cancel or there are none", "  ")
+    return wrapped(
+        f"hub direction, averaged as vectors: {mean:03.0f} deg, {by_wind:03.0f} deg weighted with "
+        f"the wind, steadiness {told.steadiness[0]:.2f} ({int(told.count[0])} values, recovery "
+        f"{100 * told.recovery[0]:.0f} %)",
+        "  ",
+    )
 
 
 def _shown(over: RotorClimate, units: Units) -> tuple[Unit, float, int]:

@@ -3,7 +3,7 @@
 from __future__ import annotations
 
 import json
-from collections.abc import Sequence
+from collections.abc import Iterator, Sequence
 from typing import IO, Any
 
 import numpy as np
@@ -57,8 +57,10 @@ def write_rotor_json(
     out.write(f'"failures": {_text(failures)}}}\n')
 
 
-def rotor_records(told: Rotor, expected: ExpectedVeer | None = None) -> list[list[dict[str, Any]]]:
-    """Return the objects of each profile, one a turbine."""
+def rotor_records(
+    told: Rotor, expected: ExpectedVeer | None = None
+) -> Iterator[list[dict[str, Any]]]:
+    """Give the objects of each profile, one a turbine."""
     count, turbines = told.veer.shape
     columns = _columns(told)
     more = {} if expected is None else _columns(expected)
@@ -67,7 +69,6 @@ def rotor_records(told: Rotor, expected: ExpectedVeer | None = None) -> list[lis
         plain(told.hub_height),
         plain(told.rotor_diameter),
     )
-    records = []
     for row in range(count):
         of_profile = []
         for place in range(turbines):
@@ -82,8 +83,7 @@ def rotor_records(told: Rotor, expected: ExpectedVeer | None = None) -> list[lis
                     name: values[row][place] for name, values in more.items()
                 }
             of_profile.append(record)
-        records.append(of_profile)
-    return records
+        yield of_profile
 
 
 def climate_record(over: RotorClimate) -> dict[str, Any]:

@@ -64,6 +64,8 @@ turbine: hub 119 m, rotor 100 m, from 69 to 169 m
 Veer (deg) by all; recovery and shares in %
   all  count  recov.  mean   5 %  median  95 %  wind-w.  energy-w.  > 20  < -5
   all      5      83  15.0  10.0    10.0  30.0     14.5       13.6  20.0   0.0
+  hub direction, averaged as vectors: 259 deg, 259 deg weighted with the wind,
+  steadiness 1.00 (5 values, recovery 83 %)
 
 Veer (deg) by hour; recovery and shares in %
   hour  count  recov.  mean   5 %  median  95 %  wind-w.  energy-w.  > 20  < -5
