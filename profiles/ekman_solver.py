@@ -39,7 +39,9 @@ STEP = 0.005  # of ln(xi): the grid error is below a part in 2000 of u* / kappa 
 BOTTOM, TOP = -13.8, 1.2  # ln(xi) of the table's ends: a millionth of h, and 3.3 h
 LOG_MU = (np.log(0.05), np.log(40.0))  # no boundary layer is known outside: convection to calm
 MU_STEP = 0.1  # of ln(mu): cubic interpolation errs by less than the grid does
-SHAPES = ("linear", "square", "cubic")
+#: Exponent p of each shape; the cubic has none.
+EXPONENTS = {"linear": 1, "square": 2, "fourth power": 4}
+SHAPES = (*EXPONENTS, "cubic")
 
 
 def viscosity(shape: str, xi: Any, background: float = BACKGROUND) -> Any:
@@ -49,7 +51,8 @@ def viscosity(shape: str, xi: Any, background: float = BACKGROUND) -> Any:
     Parameters
     ----------
     shape
-        ``linear`` and ``square`` are xi (1 - xi)^p with p 1 and 2, ``cubic`` is O'Brien's.
+        ``linear``, ``square`` and ``fourth power`` are xi (1 - xi)^p with p 1, 2 and 4; ``cubic``
+        is O'Brien's.
     xi : array
         Height over depth. [1]
     background
@@ -74,7 +77,7 @@ def viscosity(shape: str, xi: Any, background: float = BACKGROUND) -> Any:
         aloft = (left / (1.0 - base)) ** 2 * (base + (xi - base) * (1.0 + 2.0 * base / (1 - base)))
         within = np.where(xi < base, xi, aloft)
     else:
-        within = xi * left ** (1 + SHAPES.index(shape))
+        within = xi * left ** EXPONENTS[shape]
     return within + background * np.expm1(-xi) ** 2
 
 

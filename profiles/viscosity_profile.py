@@ -1,12 +1,13 @@
 r"""
 The steady Ekman layer over a logarithmic wall, its viscosity varying with height, fitted.
 
-The wind of :mod:`backveer.profiles.ekman_solver` for three shapes of K, of which AICc names one:
-:math:`K = \kappa u_* z (1 - z/h)^p` with p 1 ("linear") and 2 ("square"), and the cubic of O'Brien
-(1970). Because u* is in K as well as in the stress at the wall, a layer has four numbers only: its
-depth h, its friction velocity, the direction of the surface stress and the roughness length z0
-(three, if z0 is given). The geostrophic wind, taken as the same at all heights, follows from them;
-where it is known from elsewhere, that the two agree is a check of the whole.
+The wind of :mod:`backveer.profiles.ekman_solver` for four shapes of K, of which AICc names one:
+:math:`K = \kappa u_* z (1 - z/h)^p` with p 1 ("linear"), 2 ("square") and 4 ("fourth power", close
+to a viscosity that dies out exponentially), and the cubic of O'Brien (1970). Because u* is in K as
+well as in the stress at the wall, a layer has four numbers only: its depth h, its friction
+velocity, the direction of the surface stress and the roughness length z0 (three, if z0 is given).
+The geostrophic wind, taken as the same at all heights, follows from them; where it is known from
+elsewhere, that the two agree is a check of the whole.
 
 It stands beside the members of :mod:`backveer.profiles.ekman`: the AICc is of the same likelihood,
 under the noise length that the analytic fit found. Numbers and errors come from a second descent
@@ -37,8 +38,7 @@ from backveer.profiles.viscosity_verdict import Evidence, judge
 
 MINIMUM_LEVELS = 6  # four numbers and the noise, in 12
 LOWEST = 1.0  # a wind at the ground itself is no wind of the layer. [m]
-DESCENT, SECOND_DESCENT = 9, 4  # steps; further ones move no number by a tenth of its error
-START = "square"  # the shape that the search looks for a start with
+DESCENT, SECOND_DESCENT = 8, 5  # steps; further ones move no number by a tenth of its error
 FASTEST = 200.0  # no wind of the boundary layer; beyond it nothing is fitted. [m s-1]
 QUANTITIES = (
     "log_friction_velocity",
@@ -301,6 +301,7 @@ def _fit_block(
                 reach=reach,
                 lowest=lowest,
                 noise=np.maximum(floor, noise),
+                floor=floor,
                 rms=rms,
                 chosen=dict(zip(QUANTITIES, chosen, strict=True)),
                 errors=dict(zip(QUANTITIES, off, strict=True)),
@@ -360,15 +361,18 @@ def _fit_shapes(
     winds: search.Winds, shapes: Any, analytic_length: Any, lengths: Any, floor: Any, fitted: Any
 ) -> list[_Shape]:
     shared = search.Noise.of(winds, np.where(fitted, analytic_length, 0.0))
-    start = search.first_guess(table(START), winds)
+    alone = search.Noise.of(winds, 0.0)
     fits = []
     for shape in shapes:
         look = table(shape)
-        first, residual = search.refine(look, winds, shared, start, DESCENT)
+        start = search.first_guess(look, winds)
+        # Independent noise to begin with: what is left of differences alone has many hollows.
+        first, _ = search.refine(look, winds, alone, start, DESCENT)
         about = search.spread(look, winds, first, lengths, floor)
         length = search.mean_length(about.weights, lengths)
         noise = search.Noise.of(winds, length)
         theta, _ = search.refine(look, winds, noise, first, SECOND_DESCENT)
+        _, residual = search.refine(look, winds, shared, theta, SECOND_DESCENT)
         about = search.spread(look, winds, theta, lengths, floor)
         values, errors = _quantities(look, winds, theta, about)
         inside = np.ones(fitted.shape, dtype=bool)

@@ -26,8 +26,9 @@ from backveer.profiles.surface_layer import VON_KARMAN
 DEPTH, MU, DIRECTION, ROUGHNESS = range(4)
 DEPTHS = (40.0, 6000.0)  # of the search; a layer is neither thinner nor deeper. [m]
 ROUGHNESSES = (1e-5, 3.0)  # calm sea to city: Stull (2017), Table 18-1 (second-hand), and a margin
-DEPTH_STEP, ROW_STEP = 0.35, 5  # of the grid in ln h, and in rows of the table
+DEPTH_STEP, ROW_STEP = 0.175, 4  # of the grid in ln h, and in rows of the table
 MARGIN = 3 * MU_STEP  # the search keeps off the ends of the table
+SEARCHED = 24  # levels that the grid looks at, spread over the profile: enough for a start
 HALF = 0.5  # the roughness stays below this share of the lowest level
 
 
@@ -205,6 +206,19 @@ def held_matrix(matrix: Any, may: Any) -> Any:
     return np.where(both, matrix, np.where(may, 0.0, 1.0)[:, :, np.newaxis] * np.eye(4))
 
 
+def thinned(winds: Winds) -> Winds:
+    """Keep so many levels of each profile as the grid looks at, the lowest and highest always."""
+    kept = np.minimum(winds.count, SEARCHED)
+    place = np.arange(min(SEARCHED, len(winds.z)))[:, np.newaxis]
+    place = place * np.maximum(winds.count - 1, 0) // np.maximum(kept - 1, 1)
+    place = np.minimum(place, len(winds.z) - 1)
+    there = np.arange(len(place))[:, np.newaxis] < kept
+    z, u, v = (np.take_along_axis(x, place, 0) for x in (winds.z, winds.u, winds.v))
+    return winds._replace(
+        z=np.where(there, z, 1.0), u=np.where(there, u, 0.0), v=np.where(there, v, 0.0), count=kept
+    )
+
+
 def first_guess(table: Table, winds: Winds) -> Any:
     """
     Find the best of a grid of depths and mu, by ordinary least squares.
@@ -215,6 +229,7 @@ def first_guess(table: Table, winds: Winds) -> Any:
     -------
     theta : array, shape (4, profile)
     """
+    winds = thinned(winds)
     there = winds.there
     logs, count = np.log(winds.z), np.maximum(winds.count, 1)
     sum_u, sum_v = total(winds.u), total(winds.v)

@@ -28,7 +28,8 @@ class Evidence:
     What the verdict rests on; arrays over profile.
 
     ``gain`` and ``friction`` say by how much AICc is better than that of the analytic family and
-    of a wind without friction; ``chosen`` and ``errors`` are the estimates and their errors.
+    of a wind without friction; ``chosen`` and ``errors`` are the estimates and their errors;
+    ``noise`` is what the fit leaves, ``floor`` the wind's own error. [m s-1]
     """
 
     declined: Any
@@ -41,6 +42,7 @@ class Evidence:
     reach: Any
     lowest: Any
     noise: Any
+    floor: Any
     rms: Any
     chosen: dict[str, Any]
     errors: dict[str, Any]
@@ -95,7 +97,7 @@ def judge(evidence: Evidence) -> tuple[Words, Words]:
             (error_u > LOOSE, "the error of the friction velocity is large"),
             (error_g > LOOSE * speed, "the error of the geostrophic wind is large"),
             (
-                (component > MISFIT * e.noise) & (component > MISFIT_LEAST),
+                (component > MISFIT * e.floor) & (component > MISFIT_LEAST),
                 _numbered("the layer misses the profile by {:.1f} m/s", e.rms),
             ),
         ]
