@@ -28,6 +28,7 @@ _HEAD = 64 << 10  # where the header must be
 _LINES = 60
 _HEIGHT = re.compile(r"\s*(\d{1,4}(?:\.\d+)?)\s*(m|metres|meters|ft|feet)?\s*", re.IGNORECASE)
 _UNIT = re.compile(r"[\[(]\s*(m|ft)\s*[\])]|\b(?:in|,)\s*(m|ft)\s*$", re.IGNORECASE)
+_WORD = re.compile(r"height|range|altitude|level|distance|gate|h[öo]e?he|hauteur|altura|^z\b")
 _BRACKET = re.compile(r"^(.*?)(\s*[\[(][^\])]*[\])]\s*)$")
 _DELIMITERS = (",", ";", "\t", "|")
 
@@ -79,8 +80,8 @@ def _merged(heights: list[str], names: list[str]) -> list[str] | None:
     """Join a row of heights and a row of names; None where they are none."""
     if len(heights) != len(names) or len(names) < 3:
         return None
-    # A row of data begins with a time, a row of heights with a word or with nothing.
-    if heights[0].strip() and not heights[0].strip()[0].isalpha():
+    # A row of data begins with a time or a station, a row of heights says so or says nothing.
+    if heights[0].strip() and not _WORD.search(heights[0].casefold()):
         return None
     found = [_HEIGHT.fullmatch(cell) for cell in heights]
     count = sum(match is not None for match in found)

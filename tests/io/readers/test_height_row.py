@@ -61,6 +61,7 @@ def test_every_dress_gives_the_same_profiles(dress) -> None:
         "p,t,t\n1000,15,14\n900,10,9\n",
         "time,a,b\nx,40,80\n",  # names that differ need no heights
         "Height (m),40,80\n",
+        "station,height,,\nHarrow,10,5,7\n",
         "one\ntwo\n",
         "",
         "Wind speed\ntime,40,80\n00:00,7,8\nDirection\ntime,40,80\n00:10,2,3\n",
