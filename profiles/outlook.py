@@ -151,9 +151,9 @@ def outlook(
     start = np.fmax(night.sunset, np.where(np.isnat(stack.time), night.sunset, stack.time))
     if release is not None:
         start = np.broadcast_to(np.asarray(release, "datetime64[ns]"), (count,))
-    end = night.sunrise if until is None else np.asarray(until, "datetime64[ns]")
+    end: Any = night.sunrise if until is None else np.asarray(until, "datetime64[ns]")
     end = np.broadcast_to(end, (count,))
-    span = (end - start) / np.timedelta64(1, "s")
+    span: Any = (end - start) / np.timedelta64(1, "s")
 
     g, shear, g_error, known = _geostrophic(balance, fit)
     usable = stack.usable("wind") & (stack.height <= TOP)

@@ -11,6 +11,7 @@ refraction is that of a standard atmosphere, so that a sunset may be a minute or
 from __future__ import annotations
 
 from dataclasses import dataclass
+from typing import Any
 
 import numpy as np
 
@@ -149,5 +150,5 @@ def _crossing(noon: Times, latitude: Floats, side: float) -> tuple[Times, Bools,
     return moment, never_sets, never_rises
 
 
-def _seconds(value: Floats) -> Times:
+def _seconds(value: Floats) -> Any:
     return np.round(np.asarray(value) * 1e9).astype("timedelta64[ns]")

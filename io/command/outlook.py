@@ -206,7 +206,7 @@ def _verify(told: Outlook, stack: Stack, later: Stack) -> list[dict[str, Any]]:
     usable = later.usable("wind")[0]
     z = later.height[0][usable]
     seen = (later.eastward_wind + 1j * later.northward_wind)[0][usable]
-    found = []
+    found: list[dict[str, Any]] = []
     for row in range(stack.profile_count):
         predicted = at_height(stack.height[row], u[row] + 1j * v[row], z)
         sunset = stack.eastward_wind[row] + 1j * stack.northward_wind[row]
