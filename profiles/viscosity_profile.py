@@ -215,11 +215,17 @@ def wind(fitted: ViscosityProfile, z: Floats) -> tuple[Floats, Floats]:
         u_star, log_depth = fitted.friction_velocity[rows], np.log(fitted.depth[rows])
         size = u_star / VON_KARMAN
         log_mu = np.log(f / u_star / VON_KARMAN) + log_depth
-        # The wall is where the departure is as large as the geostrophic wind, F = C - s there.
+        # The wall is where the departure is as large as the geostrophic wind; F = C - s near it.
+        speed = np.hypot(east, north) / size
         c, _, _ = table(shape).look_up(np.full(rows.shape, BOTTOM), log_mu)
-        along = np.sqrt(np.maximum((np.hypot(east, north) / size) ** 2 - c.imag**2, 0.0))
-        theta = np.stack([log_depth, log_mu, 0.0 * log_mu, log_depth + BOTTOM + c.real - along])
-        turn = np.arctan2(north * flip, east) - np.arctan2(c.imag, along)
+        wall = BOTTOM + c.real - np.sqrt(np.maximum(speed**2 - c.imag**2, 0.0))
+        for _ in range(3):
+            x, slope, _ = table(shape).look_up(wall, log_mu)
+            reach = np.hypot(x.real, x.imag)
+            wall = wall + (speed - reach) * reach / (x.real * slope.real + x.imag * slope.imag)
+        x, _, _ = table(shape).look_up(wall, log_mu)
+        theta = np.stack([log_depth, log_mu, 0.0 * log_mu, log_depth + wall])
+        turn = np.arctan2(north * flip, east) - np.arctan2(x.imag, x.real)
         with np.errstate(invalid="ignore"):
             above = np.maximum(z[rows].T, np.exp(theta[search.ROUGHNESS]))
         here = np.isfinite(above)

@@ -237,7 +237,7 @@ def first_guess(table: Table, winds: Winds) -> Any:
     best = np.full(count.shape, np.inf)
     theta = np.zeros((4, count.size))
     rows = range(round(MARGIN / MU_STEP) + 4, len(table.log_mu) - 5, ROW_STEP)
-    for depth in np.arange(winds.low[DEPTH].max(), winds.high[DEPTH].min(), DEPTH_STEP):
+    for depth in np.arange(np.log(DEPTHS[0]), np.log(DEPTHS[1]), DEPTH_STEP):
         for row in rows:
             mu = table.log_mu[row]
             size = winds.f * np.exp(depth - mu) / VON_KARMAN**2
