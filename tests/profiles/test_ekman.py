@@ -352,24 +352,45 @@ def test_normal_and_student_points():
 
 def test_interval_ends_solve_the_mixture():
     """Model-averaged tail area (Turek and Fletcher, 2012), by root finding with scipy."""
-    values = np.array([1.0, 1.7, 0.2])
-    errors = np.array([0.3, 0.5, 0.1])
-    weights = np.array([0.6, 0.3, 0.1])
-    factor = np.array([1.1, 1.0, 1.2])
-    low, high = tail_ends(
-        values.reshape(3, 1, 1),
-        errors.reshape(3, 1, 1),
-        weights.reshape(3, 1),
-        np.array([[1.0]]),
-        factor.reshape(3, 1),
-    )
-    for end, tail in ((low, 0.025), (high, 0.975)):
-        root = brentq(
-            lambda x, p=tail: np.sum(weights * norm.cdf((x - values) / (errors * factor))) - p,
-            -5.0,
-            9.0,
-        )
-        assert end[0, 0] == pytest.approx(root, abs=1e-4)
+    rng = np.random.default_rng(12)
+    count = 200
+    values = rng.normal(0.0, 1.0, (4, 1, count)) * rng.choice([0.1, 1.0, 20.0], count)
+    errors = 10.0 ** rng.uniform(-1.5, 0.5, (4, 1, count))
+    weights = rng.dirichlet([0.3] * 4, count).T
+    weights[rng.random((4, count)) < 0.3] = 0.0
+    weights[1] += weights.sum(axis=0) == 0
+    weights /= weights.sum(axis=0)
+    factor = rng.uniform(1.0, 1.3, (4, count))
+    low, high = tail_ends(values, errors, weights, values[0], factor)
+    for i in range(count):
+        mean, scale = values[:, 0, i], errors[:, 0, i] * factor[:, i]
+        for end, tail in ((low, 0.025), (high, 0.975)):
+            root = brentq(
+                lambda x, i=i, p=tail, m=mean, s=scale: (
+                    np.sum(weights[:, i] * norm.cdf((x - m) / s)) - p
+                ),
+                -500.0,
+                500.0,
+            )
+            # The interval always holds the chosen estimate, here the first.
+            root = min(root, mean[0]) if tail < 0.5 else max(root, mean[0])
+            reached = np.sum(weights[:, i] * norm.cdf((end[0, i] - mean) / scale))
+            close = abs(end[0, i] - root) < 1e-3 * scale[weights[:, i] > 0].max()
+            assert close or reached == pytest.approx(tail, abs=1e-4)
+
+
+def test_a_fixed_quantity_gives_a_step():
+    """No shear with weight 0.99 and some with 0.01: the interval is no more than the step."""
+    values = np.array([0.0, 3.0]).reshape(2, 1, 1)
+    errors = np.array([0.0, 1.0]).reshape(2, 1, 1)
+    weights, factor = np.array([[0.99], [0.01]]), np.ones((2, 1))
+    low, high = tail_ends(values, errors, weights, np.zeros((1, 1)), factor)
+    assert low[0, 0] == pytest.approx(0.0, abs=1e-3)
+    assert high[0, 0] == pytest.approx(0.0, abs=1e-3)
+    weights = np.array([[0.5], [0.5]])
+    low, high = tail_ends(values, errors, weights, np.zeros((1, 1)), factor)
+    assert low[0, 0] == pytest.approx(0.0, abs=1e-3)
+    assert high[0, 0] == pytest.approx(norm.ppf(0.95, 3.0, 1.0), abs=1e-3)
 
 
 def test_doubt_about_the_member_widens_the_errors():
