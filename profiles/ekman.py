@@ -185,9 +185,21 @@ def fit(
     -------
     EkmanFit
         ``rms`` counts both components: sqrt(mean |W - fit|^2).
+
+    Raises
+    ------
+    ValueError
+        If the noise length is negative or not finite, or the top is not above the ground.
     """
+    if noise_length is not None and not 0.0 <= noise_length < np.inf:
+        raise ValueError(f"the noise length is {noise_length:g} m. Give 0 m or more.")
+    if not top > 0.0:
+        raise ValueError(f"the top is {top:g} m. Give a height above the ground.")
     count = stack.profile_count
-    floor = np.zeros(count) if error is None else np.broadcast_to(error, (count,))
+    floor = np.zeros(count)
+    if error is not None:  # where it is not known nothing is known of the noise
+        given = np.broadcast_to(np.asarray(error, dtype=float), (count,))
+        floor = np.where(given > 0, given, 0.0)
     size = max(1, min(1024, BLOCK // max(stack.height.shape[1], 1)))
     parts = [
         _fit_block(stack, coriolis, floor, slice(start, start + size), top, noise_length)
@@ -258,8 +270,13 @@ def _fit_block(
     mirrored = stack.northward_wind[rows] * rotation[:, np.newaxis]
     count, z, u, v = compact(usable, stack.height[rows], stack.eastward_wind[rows], mirrored)
     reach = np.take_along_axis(z, np.maximum(count - 1, 0)[:, np.newaxis], -1)[:, 0]
-    fitted = coriolis.applies[rows] & (count >= MINIMUM_LEVELS) & (np.nan_to_num(reach) > 0)
+    with np.errstate(invalid="ignore"):
+        increasing = ~(np.diff(z, axis=-1) <= 0).any(axis=-1) & (z[:, 0] >= 0)
+    enough = (count >= MINIMUM_LEVELS) & (np.nan_to_num(reach) > 0)
+    fitted = coriolis.applies[rows] & enough & increasing
     lowest = z[:, 0]
+    with np.errstate(over="ignore", invalid="ignore"):
+        strongest = np.max(np.where(np.isfinite(u), np.hypot(u, v), 0.0), axis=-1)
     # A profile that is not fitted passes through without levels, and is refused at the end.
     count = np.where(fitted, count, 0)
     data = profiles_of(z, u, v, count, np.where(fitted, reach, 1.0))
@@ -279,12 +296,15 @@ def _fit_block(
     verdict, why = judge(
         Evidence(
             declined=np.where(coriolis.applies[rows], "", coriolis.why[rows]),
-            levels=np.where(coriolis.applies[rows], np.count_nonzero(usable, axis=-1), 0),
+            levels=np.count_nonzero(usable, axis=-1),
+            enough=enough,
             fitted=fitted,
+            strongest=strongest,
             top=top,
             sound=all_members.sound,
             inside=all_members.inside,
             aicc=aicc,
+            aicc_anywhere=np.where(all_members.sound, all_members.aicc, np.inf).min(axis=-1),
             null=all_members.without_friction,
             wrong_sense=all_members.wrong_sense & fitted,
             lowest=lowest,

@@ -19,6 +19,7 @@ WELL, WEAKLY, NOT = "well determined", "weakly determined", "not determined"
 SHORT = 1.0  # scale heights below the top under which friction and G are not told apart
 SHORTISH = 1.95  # ... and only weakly, for e is still 0.14 there: 2.0 as it is written
 HIGH = 1.5  # scale heights of the lowest level above which the frictional part is not seen
+CALM = 0.3  # m/s: Beaufort 0 (WMO-No. 306, from memory), below which a wind has no direction
 LIGHT = 3.0  # geostrophic wind over its error, or over the noise, under which the wind is light
 LOOSE = 0.15  # error of ln(scale height), or of G over G, above which a fit is weak: K to a third
 LOST = 0.7  # error of ln(scale height) above which it is known only to a factor of two
@@ -42,11 +43,14 @@ class Evidence:
 
     declined: Any
     levels: Any
+    enough: Any
     fitted: Any
+    strongest: Any
     top: float
     sound: Any
     inside: Any
     aicc: Any
+    aicc_anywhere: Any
     null: Any
     wrong_sense: Any
     lowest: Any
@@ -86,15 +90,14 @@ def judge(evidence: Evidence) -> tuple[Words, Words]:
         component = e.rms / np.sqrt(2.0)
         grave = [
             (e.declined != "", e.declined),
-            (~e.fitted, _Numbered("too few levels ({:d}) below " + f"{e.top:.0f} m", e.levels)),
+            (~e.enough, _Numbered("too few levels ({:d}) below " + f"{e.top:.0f} m", e.levels)),
+            (~e.fitted, "the heights do not increase from the ground"),
+            (e.strongest < CALM, "light wind"),
             (e.wrong_sense, WRONG),
+            (~found & (e.null - e.aicc_anywhere < BETTER), NO_FRICTION),
             (~found & (e.sound & ~e.inside).any(axis=-1), EDGE),
             (~found, "too few levels for the correlation of the noise"),
-            (
-                e.null - best < BETTER,
-                "the profile shows no friction: a wind that is constant or linear with height "
-                "fits as well",
-            ),
+            (e.null - best < BETTER, NO_FRICTION),
             (speed < LIGHT * np.maximum(error_g, e.noise), "light wind"),
             (span < SHORT, _Numbered("the profile ends at {:.1f} scale heights", span)),
             (start > HIGH, _Numbered("the lowest level is at {:.1f} scale heights", start)),
@@ -129,6 +132,9 @@ def judge(evidence: Evidence) -> tuple[Words, Words]:
     return verdict, why
 
 
+NO_FRICTION = (
+    "the profile shows no friction: a wind that is constant or linear with height fits as well"
+)
 EDGE = "the scale height runs to the end of what the profile can tell"
 WRONG = "the turning has the wrong sense for friction at this latitude"
 

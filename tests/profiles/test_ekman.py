@@ -438,6 +438,26 @@ def test_levels_above_the_top_are_not_used():
     assert fit_of(z, w, error=[0.1]).top[0] == 2960.0
 
 
+@pytest.mark.parametrize("length", [-1.0, np.nan, np.inf])
+def test_an_impossible_noise_length_is_refused(length):
+    with pytest.raises(ValueError, match=r"the noise length is .* m\. Give 0 m or more"):
+        fit_of(Z, spiral(Z, 250.0, 10.0, -10.0), noise_length=length)
+
+
+@pytest.mark.parametrize("top", [0.0, -5.0, np.nan])
+def test_an_impossible_top_is_refused(top):
+    with pytest.raises(ValueError, match=r"the top is .* m\. Give a height above the ground"):
+        fit_of(Z, spiral(Z, 250.0, 10.0, -10.0), top=top)
+
+
+def test_an_unknown_error_is_as_none():
+    w = noisy(250.0, 10.0, -8.0)[1]
+    z = np.linspace(20.0, 2000.0, 50)
+    without = fit_of(z, w)
+    for unknown in (np.nan, 0.0, -1.0):
+        assert_same(fit_of(z, w, error=[unknown]), without)
+
+
 def test_a_known_noise_length_is_used():
     rng = np.random.default_rng(2)
     w = spiral(Z, 250.0, 10.0, -7.0 + 2.0j) + correlated_noise(rng, Z[np.newaxis], 200.0, 0.3)
@@ -596,6 +616,23 @@ def noisy(delta, g, a, top=2000.0, count=50, base=20.0, s=0.0, sigma=0.3, sign=1
             50.0,
             "not determined",
             "the turning has the wrong sense for friction at this latitude",
+        ),
+        (
+            Z,
+            np.full((1, Z.size), 6.0 - 2.0j),
+            50.0,
+            "not determined",
+            "the profile shows no friction",
+        ),
+        (Z, 6.0 - 2.0j + 0.002 * Z[np.newaxis], 50.0, "not determined", "shows no friction"),
+        (Z, np.zeros((1, Z.size)), 50.0, "not determined", "light wind"),
+        (Z[::-1], spiral(Z[::-1], 250.0, 9.0, -9.0), 50.0, "not determined", "do not increase"),
+        (
+            np.sort([*Z, 420.0]),
+            noisy(250.0, 9.0, -9.0, count=51)[1],
+            50.0,
+            "not determined",
+            "incr",
         ),
         (*noisy(250.0, 10.0, 0.0, seed=1), 50.0, "not determined", "the profile shows no friction"),
         (
