@@ -27,8 +27,9 @@ import numpy as np
 from backveer.profiles.grid import ordered_sum
 
 TAIL = 0.025  # on either side of a 95 % interval
-FAR = 6.0  # standard errors beyond which a tail is empty
-BISECTIONS = 18  # to a few millionths of the way between the farthest tails
+POINT = 1.959963985  # standard errors to the tail of one normal distribution
+BISECTIONS = 18  # to a few millionths of the way between the ends of the members by themselves
+STEP = 1e-140  # width of a step: its square and that of its inverse are numbers still
 NEGLIGIBLE = 1e-4  # weight of a member that moves no end of an interval
 
 # Abramowitz, M., and I. A. Stegun, 1964: Handbook of Mathematical Functions, formula 26.2.17
@@ -104,13 +105,14 @@ def tail_ends(values: Any, errors: Any, weights: Any, chosen: Any, factor: Any) 
     counted = np.broadcast_to((weights > 0)[:, np.newaxis], values.shape)
     apart = np.where(counted, values - chosen, 0.0)
     wide = np.where(counted, errors * factor[:, np.newaxis], 0.0)
-    bottom = np.min(apart - FAR * wide, axis=0)
-    top = np.max(apart + FAR * wide, axis=0)
     # A quantity that a member fixes (no shear) is a step of its distribution: all but a step.
-    steep = 1.0 / (np.maximum(wide, 1e-9 * (top - bottom)) + 1e-300)
+    steep = 1.0 / (wide + STEP)
     ends = []
-    for tail in (TAIL, 1.0 - TAIL):
-        low, high = bottom, top
+    for tail, point in ((TAIL, -POINT), (1.0 - TAIL, POINT)):
+        # The end lies between the ends of the members by themselves.
+        own = apart + point * wide
+        low = np.min(np.where(counted, own, np.inf), axis=0)
+        high = np.max(np.where(counted, own, -np.inf), axis=0)
         for _ in range(BISECTIONS):
             middle = 0.5 * (low + high)
             short = -tail

@@ -18,6 +18,7 @@ from backveer.profiles.ekman_moments import (
     Profiles,
     basis_moments,
     coarse_moments,
+    decay,
     whiten,
 )
 from backveer.profiles.ekman_parameters import describe, quantities, standard_errors
@@ -177,9 +178,8 @@ def _either_sense(data: Profiles, roof: Any) -> tuple[Any, ...]:
 
 def _rms(data: Profiles, answer: Any) -> Any:
     z = data.z
-    x = z / answer["scale_height"][:, np.newaxis]
-    size = np.exp(-x)
-    c, s = size * np.cos(x), -size * np.sin(x)
+    c, s = np.empty_like(z), np.empty_like(z)
+    decay(z, answer["scale_height"][:, np.newaxis], c, s)
     square: Any = 0.0
     for part, (a, b) in ((np.real, (c, s)), (np.imag, (s, c))):
         sign = 1.0 if part is np.imag else -1.0
