@@ -13,7 +13,7 @@ here opens a file, draws or prints. Each module's first line says what it is abo
 - Friction: ekman, ekman_members, ekman_search, ekman_moments, ekman_solver, ekman_errors,
   ekman_intervals, ekman_parameters, ekman_verdict, surface_layer, drag_law, neutral_layer,
   viscosity_profile, viscosity_search, viscosity_verdict
-- Distance from balance: geostrophic, balance, free_air, momentum_integral
+- Distance from balance: geostrophic, balance, free_air, momentum_integral, stress_profile
 - Temperature advection: thermal_wind, friction_correction, layer_line
 - The boundary layer: boundary_layer, inversions, low_level_jet
 - All of it: statement
