@@ -12,7 +12,7 @@ here opens a file, draws or prints. Each module's first line says what it is abo
 - How the wind turns: turning, direction
 - Friction: ekman, ekman_members, ekman_search, ekman_moments, ekman_solver, ekman_errors,
   ekman_intervals, ekman_parameters, ekman_verdict, surface_layer, drag_law, neutral_layer,
-  viscosity_profile, viscosity_search, viscosity_verdict
+  viscosity_profile, viscosity_search, viscosity_shapes, viscosity_verdict
 - Distance from balance: geostrophic, balance, free_air, momentum_integral, stress_profile
 - Temperature advection: thermal_wind, friction_correction, layer_line
 - The boundary layer: boundary_layer, inversions, low_level_jet

@@ -28,26 +28,22 @@ from backveer.profiles.earth import Coriolis
 from backveer.profiles.ekman import BLOCK, TOP, EkmanFit
 from backveer.profiles.ekman_errors import LENGTHS, t95
 from backveer.profiles.ekman_intervals import averaged, tail_ends, weights_of
-from backveer.profiles.ekman_members import _aicc
-from backveer.profiles.ekman_solver import BOTTOM, SHAPES, Table, table
+from backveer.profiles.ekman_solver import BOTTOM, SHAPES, table
 from backveer.profiles.grid import compact
 from backveer.profiles.labels import Floats, Labelled, Words, variable
 from backveer.profiles.stack import Stack
 from backveer.profiles.surface_layer import VON_KARMAN
+from backveer.profiles.viscosity_shapes import (
+    QUANTITIES,
+    criterion_of,
+    fit_shapes,
+    without_friction,
+)
 from backveer.profiles.viscosity_verdict import Evidence, judge
 
 MINIMUM_LEVELS = 6  # four numbers and the noise, in 12
 LOWEST = 1.0  # a wind at the ground itself is no wind of the layer. [m]
-DESCENT, SECOND_DESCENT = 8, 5  # steps; further ones move no number by a tenth of its error
 FASTEST = 200.0  # no wind of the boundary layer; beyond it nothing is fitted. [m s-1]
-QUANTITIES = (
-    "log_friction_velocity",
-    "log_roughness_length",
-    "log_depth",
-    "cross_isobar_angle",
-    "eastward",
-    "northward",
-)
 
 
 @dataclass(frozen=True, eq=False)
@@ -268,15 +264,15 @@ def _fit_block(
         *search.bounds(np.where(fitted, lowest, 10.0), np.where(fitted, roughness, np.nan)),
     )  # fmt: skip
     with np.errstate(over="ignore", invalid="ignore", divide="ignore", under="ignore"):
-        fits = _fit_shapes(winds, shapes, analytic.noise_length[rows], lengths, floor, fitted)
+        fits = fit_shapes(winds, shapes, analytic.noise_length[rows], lengths, floor, fitted)
         numbers = np.maximum(count, 1)
         free = 4.0 - known
         effective = np.where(fitted, analytic.effective_levels[rows], 1.0)
         squares = np.stack([one.residual for one in fits], -1)
         criterion = np.stack(
-            [_criterion(one.residual, numbers, effective, free) for one in fits], -1
+            [criterion_of(one.residual, numbers, effective, free) for one in fits], -1
         )
-        doubt = np.stack([_criterion(one.residual, numbers, numbers, free) for one in fits], -1)
+        doubt = np.stack([criterion_of(one.residual, numbers, numbers, free) for one in fits], -1)
         may = fitted[:, np.newaxis] & np.stack([one.inside for one in fits], -1)
         may &= np.isfinite(squares)
         found = may.any(axis=-1)
@@ -294,7 +290,7 @@ def _fit_block(
         rival = np.where(np.isfinite(analytic.candidate_aicc[rows]),
                          analytic.candidate_aicc[rows], np.inf).min(axis=-1)  # fmt: skip
         best = _take(criterion, choice)
-        nothing = _without_friction(winds, analytic.noise_length[rows], numbers, effective)
+        nothing = without_friction(winds, analytic.noise_length[rows], numbers, effective)
         verdict, why = judge(
             Evidence(
                 declined=np.where(coriolis.applies[rows], "", coriolis.why[rows]),
@@ -348,113 +344,6 @@ def _fit_block(
         candidate_friction_velocity=each("log_friction_velocity", np.exp),
         candidate_cross_isobar_angle=each("cross_isobar_angle", np.array),
     )
-
-
-@dataclass
-class _Shape:
-    """One shape fitted to a block."""
-
-    residual: Any  # under the noise of the analytic fit
-    values: Any
-    errors: Any
-    inside: Any
-    rms: Any
-    length: Any
-    spread: search.Spread
-
-
-def _fit_shapes(
-    winds: search.Winds, shapes: Any, analytic_length: Any, lengths: Any, floor: Any, fitted: Any
-) -> list[_Shape]:
-    shared = search.Noise.of(winds, np.where(fitted, analytic_length, 0.0))
-    alone = search.Noise.of(winds, 0.0)
-    fits = []
-    for shape in shapes:
-        look = table(shape)
-        start = search.first_guess(look, winds)
-        # Independent noise to begin with: what is left of differences alone has many hollows.
-        first, _ = search.refine(look, winds, alone, start, DESCENT)
-        about = search.spread(look, winds, first, lengths, floor)
-        length = search.mean_length(about.weights, lengths)
-        noise = search.Noise.of(winds, length)
-        theta, _ = search.refine(look, winds, noise, first, SECOND_DESCENT)
-        _, residual = search.refine(look, winds, shared, theta, SECOND_DESCENT)
-        about = search.spread(look, winds, theta, lengths, floor)
-        values, errors = _quantities(look, winds, theta, about)
-        inside = np.ones(fitted.shape, dtype=bool)
-        for number in (search.DEPTH, search.MU):
-            inside &= (theta[number] > winds.low[number] + 1e-3) & (
-                theta[number] < winds.high[number] - 1e-3
-            )
-        plain, _ = search.wind_of(look, winds.z, theta, search.scale_of(winds, theta))
-        miss = np.where(
-            winds.there, search.turned(winds.u, winds.v, theta[search.DIRECTION]) - plain, 0.0
-        )
-        square = search.total(miss[0] ** 2 + miss[1] ** 2) / np.maximum(winds.count, 1)
-        fits.append(_Shape(residual, values, errors, inside, np.sqrt(square), length, about))
-    return fits
-
-
-def _quantities(look: Table, winds: search.Winds, theta: Any, about: search.Spread) -> Any:
-    """Work out the ``QUANTITIES`` and their standard errors, shape (quantity, profile)."""
-    size = search.scale_of(winds, theta)
-    s = theta[search.ROUGHNESS] - theta[search.DEPTH]
-    x, x_s, x_m = look.look_up(s, theta[search.MU])
-    one, nothing = np.ones(size.shape), np.zeros(size.shape)
-    # arg and ln of X by s and by ln mu: d ln X = dX conj(X) / |X|^2
-    square = x.real**2 + x.imag**2
-    by_s = (x_s.imag * x.real - x_s.real * x.imag) / square
-    by_m = (x_m.imag * x.real - x_m.real * x.imag) / square
-    degree = 180.0 / np.pi
-    wind = search.turned(x.real * size, x.imag * size, -theta[search.DIRECTION])
-    change_s = search.turned(x_s.real * size, x_s.imag * size, -theta[search.DIRECTION])
-    change_m = search.turned(x_m.real * size, x_m.imag * size, -theta[search.DIRECTION])
-    aside = (-wind[1], wind[0])
-    gradients = [
-        [one, -one, nothing, nothing],
-        [nothing, nothing, nothing, one],
-        [one, nothing, nothing, nothing],
-        [degree * by_s, -degree * by_m, nothing, -degree * by_s],
-        *([wind[k] - change_s[k], change_m[k] - wind[k], aside[k], change_s[k]] for k in range(2)),
-    ]
-    values = np.stack(
-        [
-            np.log(size * VON_KARMAN),
-            theta[search.ROUGHNESS],
-            theta[search.DEPTH],
-            -degree * np.arctan2(x.imag, x.real),
-            wind[0],
-            wind[1],
-        ]
-    )
-    return values, np.stack([about.error(gradient) for gradient in gradients])
-
-
-def _criterion(residual: Any, count: Any, levels: Any, parameters: Any) -> Any:
-    """AICc of one fit, parameters a profile; as that of the analytic family."""
-    return _aicc(residual[:, np.newaxis], count, levels, parameters[:, np.newaxis])[:, 0]
-
-
-def _without_friction(winds: search.Winds, length: Any, count: Any, levels: Any) -> Any:
-    """Return the better AICc of a constant and of a linear wind."""
-    noise = search.Noise.of(winds, np.where(winds.count > 0, length, 0.0))
-    one, x = noise.whiten(winds.there + 0.0), noise.whiten(winds.z * winds.there)
-    square = search.total(one * one)
-    slope = search.total(one * x) / square
-    x = x - slope * one
-    steep = search.total(x * x)
-    constant, linear = 0.0, 0.0
-    for part in (winds.u, winds.v):
-        y = noise.whiten(part)
-        y = y - search.total(one * y) / square * one
-        constant = constant + search.total(y * y)
-        y = y - search.total(x * y) / steep * x
-        linear = linear + search.total(y * y)
-    both = [
-        _criterion(r, count, levels, np.full(count.shape, k))
-        for r, k in ((constant, 2), (linear, 4))
-    ]
-    return np.fmin(*both)
 
 
 def _of(choice: Any, stacked: Any) -> Any:

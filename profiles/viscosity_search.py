@@ -76,10 +76,9 @@ def bounds(lowest: Any, roughness: Any) -> tuple[Any, Any]:
     nothing = np.zeros(lowest.shape)
     roof = np.minimum(np.log(ROUGHNESSES[1]), np.log(HALF * lowest))
     ground = np.log(ROUGHNESSES[0])
-    low = [np.log(DEPTHS[0]), LOG_MU[0] + MARGIN, -np.inf, np.where(given < 0, given, ground)]
-    high = [np.log(DEPTHS[1]), LOG_MU[1] - MARGIN, np.inf, roof]
-    low[3] = np.where(np.isfinite(given), given, ground)
-    high[3] = np.where(np.isfinite(given), given, roof)
+    known = np.isfinite(given)
+    low = [np.log(DEPTHS[0]), LOG_MU[0] + MARGIN, -np.inf, np.where(known, given, ground)]
+    high = [np.log(DEPTHS[1]), LOG_MU[1] - MARGIN, np.inf, np.where(known, given, roof)]
     return np.stack([nothing + x for x in low]), np.stack([nothing + x for x in high])
 
 
