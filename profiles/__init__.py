@@ -15,7 +15,7 @@ here opens a file, draws or prints. Each module's first line says what it is abo
   viscosity_profile, viscosity_search, viscosity_shapes, viscosity_verdict
 - Distance from balance: geostrophic, balance, free_air, momentum_integral, stress_profile
 - Temperature advection: thermal_wind, friction_correction, layer_line
-- The boundary layer: boundary_layer, inversions, low_level_jet
+- The boundary layer: boundary_layer, inversions, low_level_jet, steadiness
 - All of it: statement
 - The coming night: outlook
 - Wind energy: rotor, rotor_levels, rotor_reasons, swept_area, hub_air, expected_veer,

@@ -10,6 +10,7 @@ from backveer.profiles import (
     earth,
     ekman,
     geostrophic,
+    steadiness,
     thermal_wind,
     turning,
     wind_error,
@@ -110,7 +111,7 @@ def statement(stack: Stack, settings: Settings | None = None) -> Statement:
     coriolis = earth.coriolis(stack, equator_limit=settings.equator_limit)
     turned = turning.turning(stack, edges=settings.layer_edges, error=error)
     layer = boundary_layer.boundary_layer(stack, critical_richardson=settings.critical_richardson)
-    fit = ekman.fit(stack, coriolis, error=error)
+    fit = steadiness.doubt_unsteady(ekman.fit(stack, coriolis, error=error), layer)
     return Statement(
         stack=stack,
         wind_error=error,
@@ -120,13 +121,16 @@ def statement(stack: Stack, settings: Settings | None = None) -> Statement:
         geostrophic=geostrophic.geostrophic(
             stack, coriolis, fit, layer, given=settings.geostrophic_wind, error=error
         ),
-        thermal_wind=thermal_wind.thermal_wind(
-            stack,
-            coriolis,
-            fit,
-            error=error,
-            pressures=settings.pressures,
-            depth=layer.bulk_richardson_depth,
+        thermal_wind=steadiness.withhold_unsteady(
+            thermal_wind.thermal_wind(
+                stack,
+                coriolis,
+                fit,
+                error=error,
+                pressures=settings.pressures,
+                depth=layer.bulk_richardson_depth,
+            ),
+            layer,
         ),
         boundary_layer=layer,
         settings=settings,
