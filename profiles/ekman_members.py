@@ -35,7 +35,7 @@ from backveer.profiles.ekman_search import (
 from backveer.profiles.grid import ordered_sum
 
 #: What a parameter costs beyond AICc. Without it one profile in five with independent noise is
-#: given a shear or a slip that it does not have; with it one in fourteen (measured, synthetic).
+#: given a shear or a slip that it does not have; with it one in twelve (2000 synthetic profiles).
 PRICE = 1.0
 #: Twice the logarithm of the likelihood by which a spiral of the other sense must fit better.
 WRONG_SENSE = 6.0
