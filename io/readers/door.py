@@ -2,6 +2,7 @@
 
 from __future__ import annotations
 
+import hashlib
 import os
 from collections.abc import Iterable, Iterator, Sequence
 from dataclasses import replace
@@ -19,6 +20,9 @@ from backveer.profiles.quality import check
 from backveer.profiles.stack import Stack
 
 Names = str | os.PathLike[str] | Iterable[str | os.PathLike[str]]
+
+# An input that waits for the check of many at once: its name, its digest, its profiles.
+_Waiting = tuple[str, str, list[Draft]]
 
 # So many cells of (profile, level) are checked at once: the arrays then still fit in the caches
 # of a small machine, and the fixed cost of a check is shared by hundreds of files.
@@ -70,9 +74,9 @@ def read_bytes(name: str, data: bytes, hints: Hints | None = None) -> Reading:
 def _read(inputs: Iterable[Input | ReadError], said: Hints) -> Reading:
     failures: list[ReadError] = []
     files: list[FileReading] = []
-    waiting: list[tuple[str, list[Draft]]] = []
+    waiting: list[_Waiting] = []
     size = 0
-    for source, outcome in _drafts(inputs, said):
+    for source, digest, outcome in _drafts(inputs, said):
         if isinstance(outcome, ReadError):
             failures.append(outcome)
             continue
@@ -80,7 +84,7 @@ def _read(inputs: Iterable[Input | ReadError], said: Hints) -> Reading:
         if waiting and size + cells > _BATCH:
             files += _checked(waiting)
             waiting, size = [], 0
-        waiting.append((source, outcome))
+        waiting.append((source, digest, outcome))
         del outcome
         size += cells
     files += _checked(waiting)
@@ -89,14 +93,15 @@ def _read(inputs: Iterable[Input | ReadError], said: Hints) -> Reading:
 
 def _drafts(
     inputs: Iterable[Input | ReadError], hints: Hints
-) -> Iterator[tuple[str, list[Draft] | ReadError]]:
-    """Give each input's profiles, not yet checked, or what is wrong with it."""
+) -> Iterator[tuple[str, str, list[Draft] | ReadError]]:
+    """Give each input's name, digest, and profiles not yet checked, or what is wrong with it."""
     nameless = bool(hints.columns)
     for opened in inputs:
         if isinstance(opened, ReadError):
-            yield opened.source or "", opened
+            yield opened.source or "", "", opened
             continue
         source, data = opened
+        digest = hashlib.sha256(data).hexdigest()
         try:
             tables = read_tables(source, data, nameless=nameless)
             del data, opened
@@ -105,7 +110,7 @@ def _drafts(
             error.source = error.source or source
             outcome = error
         tables = []  # only one copy of a large input may be in memory while it is checked
-        yield source, outcome
+        yield source, digest, outcome
         del outcome
 
 
@@ -125,15 +130,15 @@ def _understood(tables: Sequence[Any], hints: Hints) -> list[Draft]:
     return drafts
 
 
-def _checked(waiting: list[tuple[str, list[Draft]]]) -> list[FileReading]:
+def _checked(waiting: list[_Waiting]) -> list[FileReading]:
     """Check the profiles of several inputs at once, and give each input its own."""
     if not waiting:
         return []
-    drafts = [draft for _, group in waiting for draft in group]
+    drafts = [draft for _, _, group in waiting for draft in group]
     whole = _check(_joined(drafts))
     files = []
     row = 0
-    for source, group in waiting:
+    for source, digest, group in waiting:
         rows = sum(draft.shape[0] for draft in group)
         levels = max(draft.shape[1] for draft in group)
         stack = whole if len(waiting) == 1 else _part(whole, row, row + rows, levels)
@@ -143,7 +148,9 @@ def _checked(waiting: list[tuple[str, list[Draft]]]) -> list[FileReading]:
         for other in group[1:]:
             columns = columns + tuple(c for c in other.columns if c not in columns)
             remarks = remarks + [remark for remark in other.remarks if remark not in remarks]
-        files.append(FileReading(source, _with_source(stack, source), columns, tuple(remarks)))
+        files.append(
+            FileReading(source, _with_source(stack, source), columns, tuple(remarks), digest)
+        )
     return files
 
 

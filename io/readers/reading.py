@@ -67,7 +67,7 @@ class FileReading:
     remarks
         What was left out, repaired or assumed, each a sentence without a full stop.
     digest
-        SHA-256 of the input's bytes, in hexadecimal; empty where it was not kept.
+        SHA-256 of the input's bytes, uncompressed, in hexadecimal; empty where it was not kept.
     """
 
     source: str

@@ -95,8 +95,7 @@ def page(
         "flags": {str(flag.bit): flag.name for flag in FLAGS},
         "cautions": [GENERAL, *cautions],
         "inputs": [
-            {"source": file.source, "sha256": getattr(file, "digest", "") or None}
-            for file in reading.files
+            {"source": file.source, "sha256": file.digest or None} for file in reading.files
         ],
         "failures": [failure_record(failure) for failure in reading.failures],
         "more": more or {},
