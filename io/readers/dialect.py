@@ -158,7 +158,10 @@ def detect(lines: Sequence[str]) -> Detected | None:
             best = found
     longest = max(map(len, lines), default=0)
     if (best is None or best.dialect.delimiter == " ") and longest < _LONGEST_LINE:
-        best = _better_fixed(best, lines)
+        # A line of the preamble may be mostly numbers too, and blur where the columns stand.
+        whole, later = _fixed(lines), _fixed(body)
+        found = max((f for f in (whole, later) if f), key=lambda f: f.score, default=None)
+        best = found or best
     return best if best is not None and best.score >= _POOR else None
 
 
@@ -186,20 +189,20 @@ def _worth(cell: str, decimal: str) -> float:
     return 0.9 if cell in MISSING else 0.0
 
 
-def _better_fixed(best: Detected | None, lines: Sequence[str]) -> Detected | None:
-    """Take fixed columns where white space leaves rows of unequal length, if they mend that."""
+def _fixed(lines: Sequence[str]) -> Detected | None:
+    """Find fixed columns where white space leaves rows of unequal length, if they mend that."""
     rows = [line.expandtabs() for line in lines if _mostly_numbers(line)][:_FIXED_LINES]
     if len({len(row.split()) for row in rows}) < 2:
-        return best
+        return None
     columns = _columns(rows)
     if len(columns) < 2:
-        return best
+        return None
     edges = tuple(column.edge for column in columns)
     plain = [_scored(Dialect(" ", decimal), rows) for decimal in ".,"]
     fixed = [_scored(Dialect("", decimal, edges), rows, columns) for decimal in ".,"]
     rival = max((found.score for found in plain if found), default=0.0)
     winner = max((found for found in fixed if found), key=lambda f: f.score, default=None)
-    return winner if winner and winner.score > rival else best
+    return winner if winner and winner.score > rival else None
 
 
 def _mostly_numbers(line: str) -> bool:

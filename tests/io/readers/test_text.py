@@ -621,3 +621,21 @@ def test_a_large_file_needs_less_than_six_times_its_size(tmp_path, odd):
     assert int(answer[0]) == 3_000_000
     assert int(answer[1]) < 6 * path.stat().st_size
     assert answer[2] == "False"
+
+
+def test_a_preamble_full_of_numbers_does_not_blur_fixed_columns():
+    lines = ["lat 48.2 lon 16.4 elev 200 m 2032-03-01 12:00 UTC"]
+    lines += [
+        "  PRES   HGHT   TEMP   DWPT   DRCT   SKNT",
+        "   hPa      m      C      C    deg   knot",
+    ]
+    for i in range(24):
+        dew = f"{9.6 - i / 10:6.1f}" if i % 3 else " " * 6
+        wind = f"{225 + i:7d}{9.9 + i:7.1f}" if i % 5 else " " * 14
+        lines.append(f"{1005.7 - 5 * i:6.1f}{212 + 44 * i:7d}{13.9 - i / 4:7.1f} {dew}{wind}")
+    (table,) = read_tables("a.txt", "\n".join(lines).encode())
+    assert table.header == ("PRES", "HGHT", "TEMP", "DWPT", "DRCT", "SKNT")
+    assert table.units == ("hPa", "m", "C", "C", "deg", "knot")
+    assert [column.dtype.kind for column in table.columns] == ["f"] * 6
+    assert table.columns[1][:3].tolist() == [212.0, 256.0, 300.0]
+    assert int(np.isnan(table.columns[3]).sum()) == 8
