@@ -119,5 +119,6 @@ def tail_ends(values: Any, errors: Any, weights: Any, chosen: Any, factor: Any) 
             for m, weight in enumerate(weights):
                 short = short + weight * normal_tail((middle - apart[m]) * steep[m])
             low, high = np.where(short < 0, middle, low), np.where(short < 0, high, middle)
-        ends.append(0.5 * (low + high))
+        # The outer side, so that an interval which ends at a step holds the value there.
+        ends.append(low if point < 0 else high)
     return chosen + np.minimum(ends[0], 0.0), chosen + np.maximum(ends[1], 0.0)

@@ -391,6 +391,10 @@ def test_a_fixed_quantity_gives_a_step():
     low, high = tail_ends(values, errors, weights, np.zeros((1, 1)), factor)
     assert low[0, 0] == pytest.approx(0.0, abs=1e-3)
     assert high[0, 0] == pytest.approx(norm.ppf(0.95, 3.0, 1.0), abs=1e-3)
+    # A chosen shear whose interval ends at no shear holds no shear, not all but that.
+    low, high = tail_ends(values, errors, weights, np.full((1, 1), 3.0), factor)
+    assert low[0, 0] <= 0.0
+    assert low[0, 0] == pytest.approx(0.0, abs=1e-3)
 
 
 def test_doubt_about_the_member_widens_the_errors():

@@ -87,14 +87,14 @@ def test_intervals_hold_the_truth(sigma, levels):
 @pytest.mark.parametrize("length", [0.0, 50.0, 150.0, 300.0])
 def test_intervals_hold_the_truth_whatever_the_noise_length(length, sigma, levels):
     """
-    One length for all. Seen: 91.9 to 98.4 %.
+    One length for all. Seen: 93.1 to 98.4 %.
 
-    The least is for shear, of some 700 profiles (binomial 1 %), the most for G with 150 m.
+    The most is for G with 150 m, and for the angle, which a no-slip spiral fixes.
     """
     shares, well = coverage(*population(length, sigma, levels, seed=2))
     assert well > 0.6
     for name, share in shares.items():
-        assert 0.91 <= share <= 0.987, (name, share)
+        assert 0.92 <= share <= 0.987, (name, share)
 
 
 @pytest.mark.parametrize("length", [50.0, 150.0, 300.0])
@@ -114,16 +114,18 @@ def test_strong_noise(length):
 @pytest.mark.parametrize("member", range(4))
 def test_each_member_by_itself(member):
     """
-    Where the simplest member is true the doubt about the others is for nothing: up to 99.5 %.
+    Where the simplest member is true the doubt about the others is for nothing: up to 99.2 %.
 
-    Its angle of 45 degrees is no estimate, and no interval could hold it less often.
+    Its angle of 45 degrees is no estimate, and an interval that gives it any weight ends there at
+    the nearest: 99.9 %.
     """
     lengths = np.random.default_rng(0).uniform(50.0, 300.0, COUNT)
     shares, _ = coverage(*population(lengths, 0.4, "sonde", seed=4, members=(member,)))
     for name, share in shares.items():
         if name.endswith("shear") and member < 2:
             continue  # a shear is named only where noise looks like one
-        assert 0.91 <= share <= 0.998, (name, share)
+        most = 1.0 if name == "cross_isobar_angle" and member == 0 else 0.995
+        assert 0.92 <= share <= most, (name, share)
 
 
 def test_independent_noise_would_hold_it_half_the_time():
