@@ -14,6 +14,9 @@ under the noise length that the analytic fit found. Numbers and errors come from
 under the noise length that the residuals of this fit show, since what the spiral misses of a layer
 with varying viscosity looks like noise of long correlation. Errors weigh the noise lengths, and
 intervals the shapes, as those of the analytic family do.
+
+A geostrophic wind that does change with height is looked for in what the fit leaves over. Where it
+shows, the errors hold what allowing for it would change, and the verdict says so.
 """
 
 from __future__ import annotations
@@ -304,6 +307,7 @@ def _fit_block(
                 lowest=lowest,
                 noise=np.maximum(floor, noise),
                 floor=floor,
+                trend=_take(np.stack([one.spread.trend for one in fits], -1), choice),
                 rms=rms,
                 chosen=dict(zip(QUANTITIES, chosen, strict=True)),
                 errors=dict(zip(QUANTITIES, off, strict=True)),

@@ -29,6 +29,8 @@ ROUGHNESSES = (1e-5, 3.0)  # calm sea to city: Stull (2017), Table 18-1 (second-
 DEPTH_STEP, ROW_STEP = 0.175, 4  # of the grid in ln h, and in rows of the table
 MARGIN = 3 * MU_STEP  # the search keeps off the ends of the table
 SEARCHED = 24  # levels that the grid looks at, spread over the profile: enough for a start
+#: Chi square of a wind that changes with height: 99.9 % point for two degrees of freedom.
+TREND = 13.8
 HALF = 0.5  # the roughness stays below this share of the lowest level
 
 
@@ -175,18 +177,25 @@ class Normal:
     matrix: Any  # (profile, 4, 4)
 
 
-def normal_equations(table: Table, winds: Winds, theta: Any, *noises: Noise) -> list[Normal]:
-    """Set up the normal equations at some numbers, under each noise."""
+def normal_equations(
+    table: Table, winds: Winds, theta: Any, *noises: Noise, trend: bool = False
+) -> list[Normal]:
+    """Set up the normal equations at some numbers, under each noise; ``trend`` adds two columns."""
     wind, change = wind_of(table, winds.z, theta, scale_of(winds, theta))
+    if trend:
+        # A wind that grows with height, along the stress and to its left. [m s-1 per km]
+        rise, nothing = winds.z * 1e-3, 0.0 * winds.z
+        change = np.concatenate([change, [[rise, nothing], [nothing, rise]]])
+    n = len(change)
     off = turned(winds.u, winds.v, theta[DIRECTION]) - wind
     answers = []
     for noise in noises:
         r, j = noise.whiten(off), noise.whiten(change)
-        matrix = np.empty((winds.count.size, 4, 4))
-        downhill = np.empty((winds.count.size, 4))
-        for a in range(4):
+        matrix = np.empty((winds.count.size, n, n))
+        downhill = np.empty((winds.count.size, n))
+        for a in range(n):
             downhill[:, a] = total(j[a, 0] * r[0] + j[a, 1] * r[1])
-            for b in range(a, 4):
+            for b in range(a, n):
                 matrix[:, a, b] = total(j[a, 0] * j[b, 0] + j[a, 1] * j[b, 1])
                 matrix[:, b, a] = matrix[:, a, b]
         answers.append(Normal(total(r[0] * r[0] + r[1] * r[1]), downhill, matrix))
@@ -202,7 +211,7 @@ def free(winds: Winds, theta: Any, downhill: Any) -> Any:
 def held_matrix(matrix: Any, may: Any) -> Any:
     """Return the matrix with one on the diagonal, and nothing beside it, where none may move."""
     both = may[:, :, np.newaxis] & may[:, np.newaxis, :]
-    return np.where(both, matrix, np.where(may, 0.0, 1.0)[:, :, np.newaxis] * np.eye(4))
+    return np.where(both, matrix, np.where(may, 0.0, 1.0)[:, :, np.newaxis] * np.eye(len(may.T)))
 
 
 def thinned(winds: Winds) -> Winds:
@@ -303,10 +312,10 @@ def step(winds: Winds, theta: Any, matrix: Any, downhill: Any, damping: Any) -> 
 
 def solvable(matrix: Any) -> tuple[Any, Any]:
     """Put the identity where a matrix is no use, and say where it is."""
-    place = np.arange(4)
+    place = np.arange(matrix.shape[-1])
     diagonal = matrix[:, place, place]
     sound = np.isfinite(matrix).all(axis=(1, 2)) & (diagonal > 0).all(axis=-1)
-    matrix = np.where(sound[:, np.newaxis, np.newaxis], matrix, np.eye(4))
+    matrix = np.where(sound[:, np.newaxis, np.newaxis], matrix, np.eye(place.size))
     root = np.sqrt(matrix[:, place, place])
     # A grain on the diagonal: numbers that cannot be told apart get a huge error, and no crash.
     matrix[:, place, place] += 1e-10 * root**2
@@ -321,6 +330,7 @@ class Spread:
     covariance: Any  # (profile, length, 4, 4)
     shift: Any  # (profile, length, 4)
     noise: Any  # (profile,): standard deviation of a component
+    trend: Any  # (profile,): chi square, two degrees of freedom, of a change with height left over
 
     def error(self, gradient: Any) -> Any:
         """Return the standard error of a quantity with the gradient (4, profile)."""
@@ -350,27 +360,27 @@ def spread(table: Table, winds: Winds, theta: Any, lengths: Any, floor: Any) -> 
         Least standard error of a wind component. [m s-1]
     """
     noises = [Noise.of(winds, length) for length in lengths]
-    answers = normal_equations(table, winds, theta, *noises)
-    logs, covariances, shifts, variances = [], [], [], []
+    answers = normal_equations(table, winds, theta, *noises, trend=True)
+    logs, covariances, shifts, variances, gains = [], [], [], [], []
     wind = total(winds.u**2 + winds.v**2)
     for noise, one in zip(noises, answers, strict=True):
-        may = (winds.low != winds.high).T & free(winds, theta, 0.0 * one.downhill)
-        matrix, sound = solvable(held_matrix(one.matrix, may))
-        inverse = np.linalg.inv(matrix)
-        both = may[:, :, np.newaxis] & may[:, np.newaxis, :] & sound[:, np.newaxis, np.newaxis]
-        inverse = np.where(both, inverse, 0.0)
-        move = np.zeros(one.downhill.shape)
-        for b in range(4):
-            move = move + inverse[:, :, b] * one.downhill[:, b : b + 1]
-        gain = np.zeros(floor.shape)
-        for b in range(4):
-            gain = gain + move[:, b] * one.downhill[:, b]
-        freedom = np.maximum(2 * winds.count - np.count_nonzero(may, axis=-1), 1)
+        may = (winds.low != winds.high).T & free(winds, theta, 0.0 * one.downhill[:, :4])
+        inverse, move, gain, _ = _solved(one.matrix[:, :4, :4], one.downhill[:, :4], may)
+        freedom = np.maximum(2 * winds.count - np.count_nonzero(may, axis=-1), 3)
         residual = np.maximum(one.residual - gain, 1e-9 * (wind + 1e-300))
-        _, log_size = np.linalg.slogdet(matrix)
-        logs.append(-0.5 * freedom * np.log(residual) - noise.log_determinant - 0.5 * log_size)
+        # A wind that changes with height would pass for noise of long correlation: the lengths are
+        # judged by what is left beside it.
+        beside = np.concatenate([may, np.ones((len(may), 2), dtype=bool)], axis=1)
+        wider, farther, whole, log_size = _solved(one.matrix, one.downhill, beside)
+        least = np.maximum(one.residual - whole, 1e-9 * (wind + 1e-300))
+        logs.append(-0.5 * (freedom - 2) * np.log(least) - noise.log_determinant - 0.5 * log_size)
+        gains.append((residual - least) * (freedom - 2) / least)
         variance = np.maximum(residual / freedom, floor**2)
         variances.append(variance)
+        # Where it plainly is there, the numbers may be off by what allowing for it would move them.
+        plain = gains[-1] > TREND
+        inverse = np.where(plain[:, np.newaxis, np.newaxis], wider[:, :4, :4], inverse)
+        move = np.where(plain[:, np.newaxis], farther[:, :4], move)
         covariances.append(inverse * variance[:, np.newaxis, np.newaxis])
         shifts.append(np.clip(move, -1.0, 1.0))
     log = np.stack(logs, -1)
@@ -378,10 +388,26 @@ def spread(table: Table, winds: Winds, theta: Any, lengths: Any, floor: Any) -> 
     highest = np.max(log, axis=-1, keepdims=True)
     weights = np.where(np.isfinite(highest), np.exp(log - highest), 1.0 / len(noises))
     weights = weights / total(weights.T)[:, np.newaxis]
-    noise_square = np.zeros(floor.shape)
+    noise_square, trend = np.zeros(floor.shape), np.zeros(floor.shape)
     for length, variance in enumerate(variances):
         noise_square = noise_square + weights[:, length] * variance
-    return Spread(weights, np.stack(covariances, 1), np.stack(shifts, 1), np.sqrt(noise_square))
+        trend = trend + np.where(weights[:, length] > 0, weights[:, length] * gains[length], 0.0)
+    return Spread(
+        weights, np.stack(covariances, 1), np.stack(shifts, 1), np.sqrt(noise_square), trend
+    )
+
+
+def _solved(matrix: Any, downhill: Any, may: Any) -> tuple[Any, Any, Any, Any]:
+    """Inverse of the normal matrix, the step, what it gains, and the log of the determinant."""
+    matrix, sound = solvable(held_matrix(matrix, may))
+    both = may[:, :, np.newaxis] & may[:, np.newaxis, :] & sound[:, np.newaxis, np.newaxis]
+    inverse = np.where(both, np.linalg.inv(matrix), 0.0)
+    move, gain = np.zeros(downhill.shape), np.zeros(len(downhill))
+    for b in range(downhill.shape[1]):
+        move = move + inverse[:, :, b] * downhill[:, b : b + 1]
+    for b in range(downhill.shape[1]):
+        gain = gain + move[:, b] * downhill[:, b]
+    return inverse, move, gain, np.linalg.slogdet(matrix)[1]
 
 
 def mean_length(weights: Any, lengths: Any = LENGTHS) -> Any:

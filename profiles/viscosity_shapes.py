@@ -36,7 +36,8 @@ class Shape:
 
     ``residual`` is the whitened sum of squares under the noise of the analytic fit, ``values`` and
     ``errors`` those of ``QUANTITIES`` (quantity, profile), ``inside`` whether depth and mu are no
-    ends of their ranges, ``rms`` the plain vector residual [m s-1], ``length`` the noise length [m].
+    ends of their ranges, ``rms`` the plain vector residual [m s-1] and ``length`` the noise
+    length [m].
     """
 
     residual: Any  # under the noise of the analytic fit

@@ -14,6 +14,7 @@ import numpy as np
 
 from backveer.profiles.ekman_verdict import BETTER, LIGHT, MISFIT, MISFIT_LEAST, NOT, WEAKLY, WELL
 from backveer.profiles.labels import Words
+from backveer.profiles.viscosity_search import TREND
 
 SHORT, SHORTISH = 0.3, 0.8  # depths that the profile must reach to see any, and enough of the layer
 HIGH = 0.3  # depths of the lowest level above which stress and roughness are not seen
@@ -29,7 +30,8 @@ class Evidence:
 
     ``gain`` and ``friction`` say by how much AICc is better than that of the analytic family and
     of a wind without friction; ``chosen`` and ``errors`` are the estimates and their errors;
-    ``noise`` is what the fit leaves, ``floor`` the wind's own error. [m s-1]
+    ``noise`` is what the fit leaves, ``floor`` the wind's own error [m s-1]; ``trend`` is the chi
+    square of a change with height that the fit leaves over.
     """
 
     declined: Any
@@ -43,6 +45,7 @@ class Evidence:
     lowest: Any
     noise: Any
     floor: Any
+    trend: Any
     rms: Any
     chosen: dict[str, Any]
     errors: dict[str, Any]
@@ -63,6 +66,8 @@ def judge(evidence: Evidence) -> tuple[Words, Words]:
         span, start = e.reach / depth, e.lowest / depth
         error_u = e.errors["log_friction_velocity"]
         component = e.rms / np.sqrt(2.0)
+        light = speed < LIGHT * np.maximum(error_g, e.noise)
+        lost = light | ~(error_u < LOST) | ~(e.errors["log_depth"] < LOST)
         grave = [
             (e.declined != "", e.declined),
             (~e.fitted, _numbered("too few levels with wind ({:d}) in the layer", e.levels)),
@@ -72,7 +77,11 @@ def judge(evidence: Evidence) -> tuple[Words, Words]:
                 "the profile shows no friction: a wind that is constant or linear with height "
                 "fits as well",
             ),
-            (speed < LIGHT * np.maximum(error_g, e.noise), "light wind"),
+            (
+                lost & (e.trend > TREND),
+                "the geostrophic wind seems to change with height more than this layer can bear",
+            ),
+            (light, "light wind"),
             (span < SHORT, _numbered("the profile ends at {:.1f} depths of the layer", span)),
             (start > HIGH, _numbered("the lowest level is at {:.1f} depths of the layer", start)),
             (
@@ -88,6 +97,11 @@ def judge(evidence: Evidence) -> tuple[Words, Words]:
             (
                 e.gain < -BETTER,
                 "a constant viscosity fits the profile better",
+            ),
+            (
+                e.trend > TREND,
+                "what is left over changes with height: the geostrophic wind may, and here it "
+                "may not",
             ),
             (span < SHORTISH, _numbered("the profile ends at {:.1f} depths of the layer", span)),
             (
