@@ -13,6 +13,7 @@ from backveer.profiles import (
     steadiness,
     thermal_wind,
     turning,
+    viscosity_profile,
     wind_error,
 )
 from backveer.profiles.labels import Floats, Labelled
@@ -38,6 +39,10 @@ class Settings:
         Bounds of the thermal-wind layers, descending; None for the standard ones. [Pa]
     critical_richardson
         Bulk Richardson number at the top of the boundary layer.
+    varying_viscosity
+        Fit layers whose viscosity varies with height beside the spirals; costs ten times as much.
+    roughness_length
+        Roughness length for that, where it is known. [m]
     """
 
     equator_limit: float = 5.0
@@ -46,6 +51,8 @@ class Settings:
     layer_edges: tuple[float, ...] = turning.DEFAULT_EDGES
     pressures: tuple[float, ...] | None = None
     critical_richardson: float = 0.25
+    varying_viscosity: bool = False
+    roughness_length: float | None = None
 
 
 @dataclass(frozen=True, eq=False)
@@ -65,6 +72,7 @@ class Statement:
     thermal_wind: thermal_wind.ThermalWind
     boundary_layer: boundary_layer.BoundaryLayer
     settings: Settings
+    viscosity_profile: viscosity_profile.ViscosityProfile | None = None
 
     @property
     def answers(self) -> dict[str, Labelled]:
@@ -112,6 +120,11 @@ def statement(stack: Stack, settings: Settings | None = None) -> Statement:
     turned = turning.turning(stack, edges=settings.layer_edges, error=error)
     layer = boundary_layer.boundary_layer(stack, critical_richardson=settings.critical_richardson)
     fit = steadiness.doubt_unsteady(ekman.fit(stack, coriolis, error=error), layer)
+    varying = None
+    if settings.varying_viscosity:
+        varying = viscosity_profile.fit(
+            stack, coriolis, fit, error=error, roughness_length=settings.roughness_length
+        )
     return Statement(
         stack=stack,
         wind_error=error,
@@ -134,4 +147,5 @@ def statement(stack: Stack, settings: Settings | None = None) -> Statement:
         ),
         boundary_layer=layer,
         settings=settings,
+        viscosity_profile=varying,
     )

@@ -52,6 +52,17 @@ from backveer.io.readers.reading import Hints
     "--pressures", metavar="P,P,...", help="Bounds of the thermal-wind layers, hPa, increasing."
 )
 @click.option(
+    "--varying-viscosity",
+    is_flag=True,
+    help="Fit layers whose viscosity varies with height beside the spirals.",
+)
+@click.option(
+    "--roughness",
+    type=click.FloatRange(1e-6, 5),
+    metavar="Z0",
+    help="Roughness length for that, m; fitted when left out.",
+)
+@click.option(
     "--critical-richardson",
     type=click.FloatRange(0.05, 2),
     default=0.25,
@@ -72,6 +83,8 @@ def turn(
     equator_limit: float,
     layers: str | None,
     pressures: str | None,
+    varying_viscosity: bool,
+    roughness: float | None,
     critical_richardson: float,
 ) -> int:
     """
@@ -106,6 +119,8 @@ def turn(
             wind_error=wind_error,
             pressures=None if bounds is None else tuple(100.0 * p for p in reversed(bounds)),
             critical_richardson=critical_richardson,
+            varying_viscosity=varying_viscosity or roughness is not None,
+            roughness_length=roughness,
             **chosen,
         ),
     )

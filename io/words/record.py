@@ -45,6 +45,14 @@ EKMAN = (
     "cross_isobar_angle",
     "friction_velocity",
 )
+VISCOSITY = (
+    "friction_velocity",
+    "roughness_length",
+    "depth",
+    "cross_isobar_angle",
+    "geostrophic_eastward_wind",
+    "geostrophic_northward_wind",
+)
 
 
 def write_json(
@@ -220,6 +228,11 @@ class _Answers:
             "coriolis": self._coriolis(row),
             "turning": self._turning(row),
             "ekman": self._ekman(row),
+            **(
+                {"viscosity_profile": self._viscosity(row)}
+                if "viscosity_profile" in self.of
+                else {}
+            ),
             "geostrophic": self._geostrophic(row),
             "thermal_wind": {
                 "layers": _layers(
@@ -291,6 +304,34 @@ class _Answers:
             "effective_levels": of("effective_levels", row),
             "noise_length": of("noise_length", row),
             "top": of("top", row),
+            "verdict": of("verdict", row),
+            "why": of("why", row) or None,
+            "candidates": candidates,
+        }
+
+    def _viscosity(self, row: int) -> dict[str, Any]:
+        of = self.of["viscosity_profile"]
+        candidates = [
+            {
+                "shape": shape,
+                "aicc": of("candidate_aicc", row)[place],
+                "friction_velocity": of("candidate_friction_velocity", row)[place],
+                "cross_isobar_angle": of("candidate_cross_isobar_angle", row)[place],
+            }
+            for place, shape in enumerate(of("candidate_shape", row))
+            if shape
+        ]
+        return {
+            "shape": of("shape", row) or None,
+            **{name: of(name, row) for name in VISCOSITY},
+            "rms": of("rms", row),
+            "aicc": of("aicc", row),
+            "aicc_gain": of("aicc_gain", row),
+            "errors": {name: of(f"{name}_error", row) for name in VISCOSITY},
+            "intervals": {
+                name: [of(f"{name}_low", row), of(f"{name}_high", row)] for name in VISCOSITY
+            },
+            "noise_length": of("noise_length", row),
             "verdict": of("verdict", row),
             "why": of("why", row) or None,
             "candidates": candidates,

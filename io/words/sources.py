@@ -101,6 +101,17 @@ SOURCES = (
         ("ekman_errors", "ekman_intervals", "ekman_parameters", "ekman_verdict"),
     ),
     Source(
+        "viscosity that varies with height (where asked for)",
+        "the steady balance solved for K(z) = kappa u* z (1 - z/h)^p and a cubic, with a "
+        "logarithmic wall; fitted by generalised least squares and compared by AICc",
+        "d/dz (K dW/dz) = i f (W - Wg), W = 0 at z0; u*^2 = K |dW/dz| at the wall",
+        (
+            "O'Brien, J. J., 1970: A note on the vertical structure of the eddy exchange "
+            "coefficient in the planetary boundary layer. J. Atmos. Sci., 27, 1213-1215",
+        ),
+        ("viscosity_profile", "viscosity_shapes", "ekman_solver"),
+    ),
+    Source(
         "geostrophic wind of the free air; departure",
         "straight line through both components over 1500 m above the layer of friction, by "
         "generalised least squares, read at the ground; departure is wind minus geostrophic wind, "

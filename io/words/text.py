@@ -60,6 +60,7 @@ def statement_text(
         in_short(one, shown),
         _turning(one, shown),
         _ekman(one, shown),
+        _viscosity(one, shown),
         _balance(one, shown),
         _advection(one, shown),
         _boundary_layer(one, shown),
@@ -175,6 +176,34 @@ def _ekman(one: Statement, units: Units) -> str:
             ),
         ]
     return section(title, lines)
+
+
+def _viscosity(one: Statement, units: Units) -> str:
+    """Tell the layer whose viscosity varies with height, where it was asked for."""
+    fit = one.viscosity_profile
+    if fit is None:
+        return ""
+    title = "Friction: viscosity that varies with height"
+    if fit.verdict[0] == "not determined":
+        return section(title, [undetermined(fit.why[0])])
+    why = f": {fit.why[0]}" if fit.why[0] else ""
+    gain = fit.aicc_gain[0]
+    beside = (
+        f"AICc {abs(gain):.0f} {'lower' if gain > 0 else 'higher'} than that of the best spiral"
+        if np.isfinite(gain)
+        else "no spiral to compare with"
+    )
+    shown = [
+        ("friction velocity", "friction_velocity", Unit("m/s", 1.0)),
+        ("roughness length", "roughness_length", Unit("m", 1.0)),
+        ("depth", "depth", units.height),
+        ("cross-isobar angle", "cross_isobar_angle", DEGREE),
+    ]
+    rows = [("shape of K", f"{fit.shape[0]}; {beside}")]
+    for name, key, unit in shown:
+        value = with_error(getattr(fit, key)[0], getattr(fit, f"{key}_error")[0], unit)
+        rows.append((name, f"{value} {unit.name}"))
+    return section(title, [wrapped(f"{fit.verdict[0]}{why}", "  "), *pairs_of(rows)])
 
 
 def _balance(one: Statement, units: Units) -> str:

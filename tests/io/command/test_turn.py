@@ -319,3 +319,16 @@ def test_figure_and_report_are_written(capsys, tmp_path):
     assert (status, err) == (0, "")
     assert figure.read_text().lstrip().startswith("<?xml")
     assert "<!doctype html>" in page.read_text()[:20]
+
+
+def test_viscosity_that_varies_stands_beside_the_spiral_when_asked_for(capsys):
+    _, out, _ = run(capsys, "turn", EKMAN, "--json")
+    assert "viscosity_profile" not in json.loads(out)["profiles"][0]
+    status, out, _ = run(capsys, "turn", EKMAN, "--json", "--roughness", "0.1")
+    assert status == 0
+    varying = json.loads(out)["profiles"][0]["viscosity_profile"]
+    assert varying["roughness_length"] == 0.1
+    assert set(varying) >= {"friction_velocity", "depth", "errors", "verdict", "why", "candidates"}
+    assert varying["errors"]["friction_velocity"] > 0
+    _, text, _ = run(capsys, "turn", EKMAN, "--varying-viscosity")
+    assert "Friction: viscosity that varies with height" in text
