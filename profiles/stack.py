@@ -323,9 +323,21 @@ def wind_components(speed: Floats, direction: Floats) -> tuple[Floats, Floats]:
     >>> u.round(4), v.round(4)
     (array([7.0711]), array([7.0711]))
     """
-    speed = np.asarray(speed, dtype=float)
-    angle = np.radians(np.where(speed == 0, 0.0, direction))
-    return -speed * np.sin(angle) + 0.0, -speed * np.cos(angle) * (speed != 0) + 0.0
+    speed, direction = np.broadcast_arrays(
+        np.asarray(speed, dtype=float), np.asarray(direction, dtype=float)
+    )
+    u, v = np.empty(speed.shape), np.empty(speed.shape)
+    rows = max(1, _PIECE // max(1, speed[:1].size)) if speed.ndim else 1
+    # In pieces: of a large file the intermediate arrays would be half of all memory.
+    for piece in (slice(k, k + rows) for k in range(0, len(speed), rows)) if speed.ndim else ((),):
+        moving = speed[piece] != 0
+        angle = np.radians(np.where(moving, direction[piece], 0.0))
+        u[piece] = -speed[piece] * np.sin(angle) + 0.0
+        v[piece] = -speed[piece] * np.cos(angle) * moving + 0.0
+    return u, v
+
+
+_PIECE = 1 << 18  # cells
 
 
 def _kind(name: str) -> tuple[Any, Any]:

@@ -266,16 +266,20 @@ def _same_layout(cells: list[str], order: str, name: str, remedy: str) -> Moment
         return None
     if _zone(match):
         return None
-    text = np.array(cells)
-    width = text.dtype.itemsize // 4
+    try:
+        text = np.array(cells, dtype=np.bytes_)  # a quarter of what str takes, for millions of rows
+    except UnicodeEncodeError:
+        return None
+    width = text.dtype.itemsize
     if width != len(cells[0]):
         return None
-    points = text.view(np.uint32).reshape(len(cells), width)
-    digit = (points >= 48) & (points <= 57)
-    sample = digit[0]
-    if not (digit == sample).all() or not (points[:, ~sample] == points[0, ~sample]).all():
-        return None
-    values = points.astype(np.int64) - 48
+    points = text.view(np.uint8).reshape(len(cells), width)
+    sample = (points[0] >= 48) & (points[0] <= 57)
+    for place in range(width):
+        column = points[:, place]
+        alike = (column >= 48) & (column <= 57) if sample[place] else column == points[0, place]
+        if not alike.all():
+            return None
 
     def number(*keys: str) -> NDArray[np.int64] | None:
         for key in keys:
@@ -284,7 +288,7 @@ def _same_layout(cells: list[str], order: str, name: str, remedy: str) -> Moment
                 for place in range(*match.span(key)):
                     if not sample[place]:
                         break  # a decimal mark: fractions of a second are left out
-                    whole = 10 * whole + values[:, place]
+                    whole = 10 * whole + points[:, place] - 48
                 return whole
         return None
 

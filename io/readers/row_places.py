@@ -3,6 +3,7 @@
 from __future__ import annotations
 
 from collections.abc import Mapping
+from dataclasses import replace
 from typing import Any
 
 import numpy as np
@@ -88,7 +89,15 @@ def row_times(
 def _moments(column: NDArray[Any], claim: Claim, name: str, order: str) -> Moments | None:
     if column.dtype != np.float64:
         remedy = f'Say it with --unit "{claim.name}=DD/MM/YYYY" or --unit "{claim.name}=MM/DD/YYYY"'
-        return read_moments(column.tolist(), order, f'column "{claim.name}"', remedy)
+        # The levels of a profile repeat its time: each run of equal cells is read once.
+        begins = np.flatnonzero(np.append(True, column[1:] != column[:-1]))
+        lengths = np.diff(np.append(begins, column.size))
+        read = read_moments(column[begins].tolist(), order, f'column "{claim.name}"', remedy)
+        return replace(
+            read,
+            day=None if read.day is None else np.repeat(read.day, lengths),
+            second=None if read.second is None else np.repeat(read.second, lengths),
+        )
     if name != "clock":
         found = numbers_as_moments(column)
         if found is not None:

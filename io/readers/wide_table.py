@@ -59,6 +59,7 @@ def read_wide(table: Table, claims: tuple[Claim, ...], site: Site) -> Draft:
             notes.unused(claim, f"{claim.quantity.replace('_', ' ')}: at no known height")
     grid = _Grid(table, by, level_of, z.size, notes)
     levels: dict[str, Any] = dict(wind(grid.has, grid, notes, grid.first))
+    grid.let_go()
     for name in ("air_temperature", "air_pressure"):
         if grid.has(name):
             levels[name] = grid(name)
@@ -69,6 +70,7 @@ def read_wide(table: Table, claims: tuple[Claim, ...], site: Site) -> Draft:
                  "carrier_to_noise_ratio"):  # fmt: skip
         if grid.has(name):
             levels[name] = grid(name)
+    grid.let_go()
     count = len(table.lines)
     levels[site.heights_above] = np.broadcast_to(z, (count, z.size))
     profile = _of_rows(table, single, site, count, notes)
@@ -98,6 +100,11 @@ class _Grid:
 
     def has(self, quantity: str) -> bool:
         return quantity in self.by
+
+    def let_go(self) -> None:
+        """Forget the arrays that were made: what is used up need not stay in memory."""
+        self.raw.clear()
+        self.made.clear()
 
     def rawly(self, quantity: str) -> Array:
         """Return the numbers as written, NaN at heights without such a column."""
