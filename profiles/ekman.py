@@ -306,6 +306,7 @@ def _fit_block(
             aicc=aicc,
             aicc_anywhere=np.where(all_members.sound, all_members.aicc, np.inf).min(axis=-1),
             null=all_members.without_friction,
+            unturned=all_members.unturned,
             wrong_sense=all_members.wrong_sense & fitted,
             lowest=lowest,
             reach=reach,

@@ -242,7 +242,7 @@ def basis_moments(data: Profiles, delta: Any, *noise: Whitening) -> list[Moments
 
 
 def coarse_moments(
-    data: Profiles, largest: Any, halvings: int, noise: Whitening
+    data: Profiles, largest: Any, halvings: int, noise: Whitening, turning: bool = True
 ) -> tuple[Moments, Any]:
     """
     Sum the moments for a row of scale heights that all profiles share, without the tangent.
@@ -258,6 +258,8 @@ def coarse_moments(
         whole, which spares nearly all of the exponentials.
     noise
         Of one length a profile, from :func:`whiten`.
+    turning
+        Without it the decay is exp(-z / delta), which does not turn.
 
     Returns
     -------
@@ -276,6 +278,8 @@ def coarse_moments(
         columns = np.empty((len(z), 2, trials, width))
         c, s = columns[:, 0], columns[:, 1]
         decay(z, largest[:, np.newaxis], c[:, -few:], s[:, -few:])
+        if not turning:
+            c[:, -few:], s[:, -few:] = np.exp(-z / largest[:, np.newaxis]), 0.0
         for start in range(trials - 2 * few, -1, -few):
             half, whole = slice(start, start + few), slice(start + few, start + 2 * few)
             np.multiply(c[:, whole], c[:, whole], out=c[:, half])

@@ -52,6 +52,7 @@ class Evidence:
     aicc: Any
     aicc_anywhere: Any
     null: Any
+    unturned: Any
     wrong_sense: Any
     lowest: Any
     reach: Any
@@ -96,8 +97,12 @@ def judge(evidence: Evidence) -> tuple[Words, Words]:
             (e.wrong_sense, WRONG),
             (~found & (e.null - e.aicc_anywhere < BETTER), NO_FRICTION),
             (~found & (e.sound & ~e.inside).any(axis=-1), EDGE),
-            (~found, "too few levels for the correlation of the noise"),
+            (
+                ~found,
+                "the levels lie too close together, or the winds are too strong, to be fitted",
+            ),
             (e.null - best < BETTER, NO_FRICTION),
+            (e.unturned - best < BETTER, UNTURNED),
             (speed < LIGHT * np.maximum(error_g, e.noise), "light wind"),
             (span < SHORT, _Numbered("the profile ends at {:.1f} scale heights", span)),
             (start > HIGH, _Numbered("the lowest level is at {:.1f} scale heights", start)),
@@ -134,6 +139,10 @@ def judge(evidence: Evidence) -> tuple[Words, Words]:
 
 NO_FRICTION = (
     "the profile shows no friction: a wind that is constant or linear with height fits as well"
+)
+UNTURNED = (
+    "the profile shows no turning by friction: a wind that strengthens along a straight line fits "
+    "as well"
 )
 EDGE = "the scale height runs to the end of what the profile can tell"
 WRONG = "the turning has the wrong sense for friction at this latitude"

@@ -8,6 +8,7 @@ import leipzig
 import numpy as np
 import pytest
 import spirals
+import synthetic
 from hypothesis import given, settings
 from hypothesis import strategies as st
 from hypothesis.extra.numpy import arrays
@@ -657,6 +658,30 @@ def noisy(delta, g, a, top=2000.0, count=50, base=20.0, s=0.0, sigma=0.3, sign=1
             "weakly determined",
             "the error of the scale height is large",
         ),
+        (
+            *noisy(9.0, 10.0, -10.0, base=5.0, top=400.0, count=80, sigma=0.05),
+            50.0,
+            "not determined",
+            "the scale height runs to the end of what the profile can tell",
+        ),
+        (
+            *noisy(300.0, 8.0, -4.0, top=900.0, count=15, sigma=1.2, seed=4),
+            50.0,
+            "not determined",
+            "the scale height is known only to a factor of two or worse",
+        ),
+        (
+            *noisy(300.0, 6.0, -6.0 / (1.1 + 0.1j), count=100, s=0.006, sigma=0.1),
+            50.0,
+            "weakly determined",
+            "the error of the geostrophic wind is large",
+        ),
+        (
+            *noisy(250.0, 10.0, -4.0 * np.exp(-0.84j)),
+            50.0,
+            "weakly determined",
+            "the turning has the wrong sense for friction at this latitude",
+        ),
     ],
 )
 def test_reasons(z, w, latitude, verdict, why):
@@ -670,6 +695,54 @@ def test_reasons(z, w, latitude, verdict, why):
                 assert np.isnan(value[0]), name
     else:
         assert np.isfinite(told.scale_height[0])
+
+
+def test_the_spiral_misses_the_profile():
+    """Every other level 3 m/s off, where the wind is known to 0.2 m/s."""
+    w = spiral(Z, 200.0, 15.0, -13.0) + np.where(np.arange(Z.size) % 2, 3.0, -3.0)
+    told = fit_of(Z, w, error=[0.2])
+    assert told.verdict[0] == "weakly determined"
+    assert told.why[0] == "the spiral misses the profile by 3.0 m/s"
+
+
+def test_levels_that_cannot_be_fitted():
+    """A nanometre apart under noise that is the same at all of them: rounding is all there is."""
+    z = 865.9 + 1e-9 * np.arange(8)
+    w = np.array([[9.0, -4.0, 6.0, 2.0, -7.0, 5.0, 1.0, -3.0]])
+    told = fit_of(z, w, noise_length=1e9)
+    assert told.verdict[0] == "not determined"
+    assert told.why[0].startswith("the levels lie too close together")
+
+
+@pytest.mark.parametrize("sign", [1.0, -1.0])
+@pytest.mark.parametrize("noise", [0.0, 0.05, 0.1])
+def test_a_wind_that_does_not_turn_is_no_spiral(noise, sign):
+    """
+    The logarithmic law over 2 km in one direction: a spiral with a shear fits it to 0.2 m/s.
+
+    Its angle would be 39 +- 4 degrees. Layers of varying viscosity, whose hodograph no spiral fits
+    much better than a line, do turn and are answered (tests/bench/constant_viscosity.py).
+    """
+    z = np.linspace(20.0, 2000.0, 50)
+    rng = np.random.default_rng(0)
+    w = 0.75 * np.log(z / 0.1) * np.exp(0.4j) * np.ones((200, 1))
+    w = w + correlated_noise(rng, np.broadcast_to(z, w.shape), 150.0, noise)
+    stack = stack_of(z, w, 50.0 * sign)
+    told = ekman.fit(stack, coriolis(stack), error=np.full(200, 0.1))
+    straight = np.char.startswith(told.why.astype(str), "the profile shows no turning by friction")
+    assert straight.mean() > 0.95
+    assert (told.verdict == "well determined").mean() == 0.0
+
+
+@pytest.mark.parametrize(("speed", "viscosity"), [(20.0, "neutral"), (10.0, "lid"), (5.0, "lid")])
+def test_layers_of_varying_viscosity_turn(speed, viscosity):
+    """Solved independently; their hodographs are curved, though no spiral fits them closely."""
+    shape = synthetic.neutral(45.0) if viscosity == "neutral" else synthetic.cubic(500.0)
+    truth = synthetic.solve(speed, 45.0, 0.1, shape)
+    stack = truth.stack(np.concatenate([[10.0], np.arange(25.0, 3001.0, 25.0)]), 45.0)
+    told = ekman.fit(stack, coriolis(stack), error=np.full(1, 0.2))
+    assert told.verdict[0] == "well determined"
+    assert told.geostrophic_eastward_wind[0] == pytest.approx(speed, rel=0.01)
 
 
 def test_two_models_fit_equally():
